@@ -1,0 +1,117 @@
+package kernel
+
+// Element is the form in which basis vectors are stored.
+type Element interface{ float32 | float64 }
+
+// Dots adds Σ_{i in r} w[i]·cols[j][i] to out[j] for every column.
+//
+//	out   length at least len(cols)
+//	w     all local rows
+//	cols  all local rows each
+//	r     from a multiple of Tile
+//
+// Four columns share one pass over a tile of w. 2·k multiplications and
+// additions a row; k columns are read once.
+func Dots[F Element](out, w []float64, cols [][]F, r Range) {
+	if len(out) < len(cols) {
+		panic("kernel: fewer sums than columns in Dots")
+	}
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		dotsTile(out, w[t.Lo:t.Hi], cols, t.Lo)
+	}
+}
+
+// SumSquares returns Σ_{i in r} w[i]², tiles added in order from zero.
+func SumSquares[F Element](w []F, r Range) float64 {
+	total := 0.0
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		total += sumSquaresTile(w[t.Lo:t.Hi])
+	}
+	return total
+}
+
+// dotsTile adds w·cols[j][first:first+len(w)] to out[j], one tile or less.
+func dotsTile[F Element](out, w []float64, cols [][]F, first int) {
+	last := first + len(w)
+	j := 0
+	for ; j+4 <= len(cols); j += 4 {
+		c := cols[j : j+4 : j+4]
+		s := dot4(w, c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last])
+		out[j] += s[0]
+		out[j+1] += s[1]
+		out[j+2] += s[2]
+		out[j+3] += s[3]
+	}
+	for ; j < len(cols); j++ {
+		out[j] += dot1(w, cols[j][first:last])
+	}
+}
+
+// tree adds the eight lanes of a sum in the order that every variant follows.
+func tree(a *[8]float64) float64 {
+	b0, b1, b2, b3 := a[0]+a[4], a[1]+a[5], a[2]+a[6], a[3]+a[7]
+	return (b0 + b2) + (b1 + b3)
+}
+
+// dot4Go is dot4 in plain Go: four columns against w, all of one length.
+func dot4Go[F Element](w []float64, c0, c1, c2, c3 []F) (sums [4]float64) {
+	sums[0], sums[1] = dot2Go(w, c0, c1)
+	sums[2], sums[3] = dot2Go(w, c2, c3)
+	return sums
+}
+
+// dot2Go keeps two columns of lanes at a time, as many as registers hold.
+func dot2Go[F Element](w []float64, c0, c1 []F) (s0, s1 float64) {
+	var a, b [8]float64
+	c0, c1 = c0[:len(w)], c1[:len(w)]
+	i := 0
+	for ; i+8 <= len(w); i += 8 {
+		v := (*[8]float64)(w[i:])
+		p, q := (*[8]F)(c0[i:]), (*[8]F)(c1[i:])
+		for l := range v {
+			a[l] += float64(v[l] * float64(p[l]))
+			b[l] += float64(v[l] * float64(q[l]))
+		}
+	}
+	for l := 0; i < len(w); i, l = i+1, l+1 {
+		a[l&7] += float64(w[i] * float64(c0[i]))
+		b[l&7] += float64(w[i] * float64(c1[i]))
+	}
+	return tree(&a), tree(&b)
+}
+
+// dot1Go is dot1 in plain Go: w·c in eight lanes.
+func dot1Go[F Element](w []float64, c []F) float64 {
+	var a [8]float64
+	c = c[:len(w)]
+	i := 0
+	for ; i+8 <= len(w); i += 8 {
+		v, p := (*[8]float64)(w[i:]), (*[8]F)(c[i:])
+		for l := range v {
+			a[l] += float64(v[l] * float64(p[l]))
+		}
+	}
+	for l := 0; i < len(w); i, l = i+1, l+1 {
+		a[l&7] += float64(w[i] * float64(c[i]))
+	}
+	return tree(&a)
+}
+
+// sumSquaresGo is sumSquaresTile in plain Go: w·w in eight lanes.
+func sumSquaresGo[F Element](w []F) float64 {
+	var a [8]float64
+	i := 0
+	for ; i+8 <= len(w); i += 8 {
+		for l, x := range (*[8]F)(w[i:]) {
+			v := float64(x)
+			a[l] += float64(v * v)
+		}
+	}
+	for l := 0; i < len(w); i, l = i+1, l+1 {
+		v := float64(w[i])
+		a[l&7] += float64(v * v)
+	}
+	return tree(&a)
+}

@@ -1,0 +1,17 @@
+package kernel
+
+// The inner loops in plain Go.
+
+func dot4[F Element](w []float64, c0, c1, c2, c3 []F) [4]float64 {
+	return dot4Go(w, c0, c1, c2, c3)
+}
+
+func dot1[F Element](w []float64, c []F) float64 { return dot1Go(w, c) }
+
+func sumSquaresTile[F Element](w []F) float64 { return sumSquaresGo(w) }
+
+func update4[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
+	update4Go(w, h, c0, c1, c2, c3)
+}
+
+func update1[F Element](w []float64, h float64, c []F) { update1Go(w, h, c) }

@@ -1,0 +1,151 @@
+package kernel
+
+// Update sets w[r] ← w[r] − Σ_j h[j]·cols[j][r], column after column in order.
+// len(h) = len(cols). Four columns share one pass over a tile of w.
+func Update[F Element](w []float64, cols [][]F, h []float64, r Range) {
+	if len(h) != len(cols) {
+		panic("kernel: coefficients and columns differ in number in Update")
+	}
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		updateTile(w[t.Lo:t.Hi], cols, h, t.Lo)
+	}
+}
+
+// Correct sets d[r] ← d[r] + Σ_j y[j]·cols[j][r], column after column in order.
+// len(y) = len(cols).
+func Correct[F Element](d []float64, cols [][]F, y []float64, r Range) {
+	if len(y) != len(cols) {
+		panic("kernel: coefficients and columns differ in number in Correct")
+	}
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		tile := d[t.Lo:t.Hi]
+		j := 0
+		for ; j+4 <= len(cols); j += 4 {
+			c := cols[j : j+4 : j+4]
+			// d − (−y)·b has the bits of d + y·b.
+			g := [4]float64{-y[j], -y[j+1], -y[j+2], -y[j+3]}
+			update4(tile, &g, c[0][t.Lo:t.Hi], c[1][t.Lo:t.Hi], c[2][t.Lo:t.Hi], c[3][t.Lo:t.Hi])
+		}
+		for ; j < len(cols); j++ {
+			update1(tile, -y[j], cols[j][t.Lo:t.Hi])
+		}
+	}
+}
+
+// Reduce sets w[r] ← w[r] − Σ_j h[j]·cols[j][r] and adds to out[j] the dot of the
+// new w with cols[j] over r, and to out[len(cols)] the sum of its squares. The
+// columns come from memory once: a tile of all of them stays in cache between
+// update and dots. Classical Gram-Schmidt done twice so reads the basis three
+// times a step, not four. The bits are those of Update, Dots and SumSquares,
+// one after the other.
+func Reduce[F Element](out, w []float64, cols [][]F, h []float64, r Range) {
+	if len(h) != len(cols) || len(out) < len(cols)+1 {
+		panic("kernel: coefficients, sums and columns differ in number in Reduce")
+	}
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		tile := w[t.Lo:t.Hi]
+		updateTile(tile, cols, h, t.Lo)
+		dotsTile(out, tile, cols, t.Lo)
+		out[len(cols)] += sumSquaresTile(tile)
+	}
+}
+
+// Next describes the basis vector that follows from w.
+type Next[F Element] struct {
+	W    []float64 // stays as it is
+	Cols [][]F     // what W is made orthogonal to
+	H    []float64 // length of Cols
+	Norm float64   // not zero
+	B    []F       // the new vector, no alias of the others
+	// Window are the vectors, oldest first, whose dots with B are wanted; they
+	// may be among Cols.
+	Window [][]F
+}
+
+// Form sets B[r] = (W[r] − Σ_j H[j]·Cols[j][r])·(1/Norm), rounded to F, and in
+// the same pass adds to gram[j] the dot of the stored B with Window[j] over r,
+// and to gram[len(Window)] the sum of its squares.
+func (n *Next[F]) Form(gram []float64, r Range) {
+	if len(n.H) != len(n.Cols) || len(gram) < len(n.Window)+1 {
+		panic("kernel: coefficients, sums and columns differ in number in Form")
+	}
+	var scratch [Tile]float64
+	scale := 1 / n.Norm
+	for r.Lo < r.Hi {
+		t := r.next(Tile)
+		tile := scratch[:t.Len()]
+		copy(tile, n.W[t.Lo:t.Hi])
+		updateTile(tile, n.Cols, n.H, t.Lo)
+		scaleInto(n.B[t.Lo:t.Hi], tile, scale)
+		dotsTile(gram, tile, n.Window, t.Lo)
+		gram[len(n.Window)] += sumSquaresTile(tile)
+	}
+}
+
+// scaleInto sets tile ← tile·scale rounded to F, and stores it in b too.
+func scaleInto[F Element](b []F, tile []float64, scale float64) {
+	b = b[:len(tile)]
+	for i, v := range tile {
+		s := F(v * scale)
+		b[i], tile[i] = s, float64(s)
+	}
+}
+
+// updateTile sets w ← w − Σ_j h[j]·cols[j][first:first+len(w)], one tile or less.
+func updateTile[F Element](w []float64, cols [][]F, h []float64, first int) {
+	last := first + len(w)
+	j := 0
+	for ; j+4 <= len(cols); j += 4 {
+		c := cols[j : j+4 : j+4]
+		update4(w, (*[4]float64)(h[j:]), c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last])
+	}
+	for ; j < len(cols); j++ {
+		update1(w, h[j], cols[j][first:last])
+	}
+}
+
+// update4Go is update4 in plain Go: w ← (((w − h₀c₀) − h₁c₁) − h₂c₂) − h₃c₃.
+func update4Go[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
+	h0, h1, h2, h3 := h[0], h[1], h[2], h[3]
+	c0, c1, c2, c3 = c0[:len(w)], c1[:len(w)], c2[:len(w)], c3[:len(w)]
+	for i, v := range w {
+		v -= float64(h0 * float64(c0[i]))
+		v -= float64(h1 * float64(c1[i]))
+		v -= float64(h2 * float64(c2[i]))
+		v -= float64(h3 * float64(c3[i]))
+		w[i] = v
+	}
+}
+
+// update1Go is update1 in plain Go: w ← w − h·c.
+func update1Go[F Element](w []float64, h float64, c []F) {
+	c = c[:len(w)]
+	for i, v := range w {
+		w[i] = v - float64(h*float64(c[i]))
+	}
+}
+
+// Widen sets dst ← src, element by element. len(dst) = len(src).
+func Widen[F Element](dst []float64, src []F) {
+	if len(dst) != len(src) {
+		panic("kernel: lengths disagree in Widen")
+	}
+	dst = dst[:len(src)]
+	for i, v := range src {
+		dst[i] = float64(v)
+	}
+}
+
+// Narrow sets dst ← src, rounded to F. len(dst) = len(src).
+func Narrow[F Element](dst []F, src []float64) {
+	if len(dst) != len(src) {
+		panic("kernel: lengths disagree in Narrow")
+	}
+	dst = dst[:len(src)]
+	for i, v := range src {
+		dst[i] = F(v)
+	}
+}
