@@ -21,6 +21,16 @@ const (
 	None  = "none"
 )
 
+// States of a run.
+const (
+	Placing   = "placing"
+	Preparing = "preparing"
+	Stepping  = "stepping"
+	Checking  = "checking"
+	Finished  = "finished"
+	BrokenOff = "broken off"
+)
+
 // Format is the version of the record's layout. A reader refuses a newer one.
 const Format = 1
 
@@ -33,6 +43,7 @@ type Record struct {
 	Format  int
 	ID      string // name of the run's folder; empty when no record is kept
 	Job     string // "solve" or "audit"
+	State   string // of the run, one of the States
 	Program Program
 	Started time.Time
 	Folder  string // working folder, absolute
