@@ -49,6 +49,7 @@ type Progress struct {
 // Reasons why a solve falls short. A reason is "" when the tolerance is met.
 const (
 	ReasonStagnated     = "stagnated"
+	ReasonIndefinite    = "not positive definite" // of CG alone; another method may do
 	ReasonFloor         = "floor of rounding"
 	ReasonContradictory = "the equations contradict each other"
 	ReasonProducts      = "limit of products"
