@@ -1,0 +1,69 @@
+package matfile
+
+import (
+	"bytes"
+	"io"
+)
+
+// openFormat tells the format by its first bytes and opens it.
+func openFormat(in *stream, o Options, purpose use) (*Reader, error) {
+	start, err := in.in.Peek(64)
+	if err != nil && err != io.EOF {
+		return nil, in.readError(err, 1)
+	}
+	if bad := foreign(start); bad != "" {
+		return nil, &FileError{Path: in.path, Line: 1, Expected: "a matrix or vector file this program reads", Found: bad}
+	}
+	switch {
+	case hasPrefixFold(start, mmBanner):
+		return openMM(in, o, purpose)
+	}
+	return nil, &FileError{Path: in.path, Line: 1, Expected: "a file that begins with " + mmBanner + ", or another format this program reads", Found: quote(start)}
+}
+
+// foreign names what the file is when it is recognisably none of ours.
+func foreign(start []byte) string {
+	for _, known := range []struct{ magic, name string }{
+		{"\xff\xfe", "UTF-16 text; save it as plain ASCII or UTF-8"},
+		{"\xfe\xff", "UTF-16 text; save it as plain ASCII or UTF-8"},
+		{"\xef\xbb\xbf", "text with a byte order mark; save it without"},
+		{"BZh", "a bzip2 file; unpack it, or use .gz or .zst"},
+		{"\xfd7zXZ", "an xz file; unpack it, or use .gz or .zst"},
+		{"7z\xbc\xaf", "a 7z archive; unpack it"},
+		{"\x89HDF", "an HDF5 file"},
+		{"MATLAB", "a MAT-file"},
+		{"%PDF", "a PDF document"},
+	} {
+		if bytes.HasPrefix(start, []byte(known.magic)) {
+			return known.name
+		}
+	}
+	return ""
+}
+
+func hasPrefixFold(b []byte, prefix string) bool {
+	return len(b) >= len(prefix) && bytes.EqualFold(b[:len(prefix)], []byte(prefix))
+}
+
+// openMM opens a Matrix Market file.
+func openMM(in *stream, o Options, purpose use) (*Reader, error) {
+	f, err := readMMHeader(in)
+	if err != nil {
+		return nil, err
+	}
+	h := f.head
+	expand := expansionOf(h.Symmetry, h.Complex, purpose == asVectors)
+	at := lineTracker{lines: f.lines}
+	if h.Dense {
+		g := &numbers{path: in.path, integer: h.Field == "integer", comments: "%"}
+		promise := h.Stored
+		if h.Complex {
+			g.perLine, promise = 2, 2*promise
+		}
+		source := &textValues{lineTracker: at, in: in, layout: g, opts: o, promise: promise}
+		return &Reader{head: h, body: &denseBody{source: source, order: newWalk(f.rows, f.cols, false, h.Symmetry), isComplex: h.Complex, path: in.path, expand: expand}}, nil
+	}
+	values := map[string]int{"pattern": 0, "real": 1, "integer": 1, "complex": 2}[h.Field]
+	g := &coordinates{path: in.path, rows: f.rows, cols: f.cols, base: 1, values: values, integer: h.Field == "integer", comments: "%", expand: expand}
+	return &Reader{head: h, body: &entryBody{lineTracker: at, in: in, layout: g, opts: o, stored: h.Stored}}, nil
+}
