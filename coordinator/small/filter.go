@@ -3,13 +3,13 @@ package small
 import "slices"
 
 // filtered is the search on those columns of W that a pivoted QR of S·W, its
-// columns scaled to one, finds independent to filterTol: with their parts
+// columns scaled to one, finds independent to filterPivot: with their parts
 // M_P = Q'·R' and X_P it runs on Q'ᵀ·X_P·R'⁻¹. O(m³), for the rare degenerate
 // basis.
 func (p *ritz) filtered(g Triangle, want int) ([]float64, int) {
 	kept := p.independent()
 	n := len(kept)
-	if n == 0 || n == p.m {
+	if n == 0 {
 		return nil, 0
 	}
 	gp, xp := make([]float64, p.m*n), make([]float64, p.m*n)
@@ -36,7 +36,7 @@ func (p *ritz) filtered(g Triangle, want int) ([]float64, int) {
 			t[i*p.m+j] = y[c]
 		}
 	}
-	if !p.trusted(t, mu) {
+	if len(mu) == 0 || !allFinite(t) {
 		return nil, 0
 	}
 	return t, len(mu)
@@ -74,7 +74,7 @@ func (p *ritz) independent() []int {
 			scaleBy(c, 1/p.norms[j])
 		}
 	}
-	f := factorPivoted(w, reach, p.m, filterTol)
+	f := factorPivoted(w, reach, p.m, filterPivot)
 	kept := slices.Clone(f.order[:f.rank])
 	slices.Sort(kept)
 	return kept

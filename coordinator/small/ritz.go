@@ -6,6 +6,9 @@ const (
 	// filterTol: a direction in which S·W·t is this small against the summands
 	// W_j·t_j is made of rounding and must not be recycled.
 	filterTol = 1e-11
+	// filterPivot is the pivot of a QR of S·W that counts as zero: a pivot
+	// overestimates the singular value, by ten and more.
+	filterPivot = 1e-10
 	// pivotFloor is the ratio of diagonal entries of G below which S·C·W counts as
 	// rank-deficient.
 	pivotFloor = 1e-14
@@ -41,9 +44,9 @@ func HarmonicRitz(q *QR, h *Hessenberg, su []float64, want int) (t []float64, di
 	smallest, largest := g.diagonalRange()
 	if smallest > pivotFloor*largest {
 		z, mu := dominant(p.m, want, p.operator(g))
-		t, directions = p.back(g, z, len(mu))
+		t = p.back(g, z, len(mu))
 		if p.trusted(t, mu) {
-			return t, directions
+			return t, len(mu)
 		}
 	}
 	return p.filtered(g, want)
@@ -117,22 +120,22 @@ func (p *ritz) operator(g Triangle) func(dst, src []float64) {
 }
 
 // back is T = G⁻¹·Z.
-func (p *ritz) back(g Triangle, z []float64, directions int) ([]float64, int) {
+func (p *ritz) back(g Triangle, z []float64, directions int) []float64 {
 	t := append([]float64(nil), z[:directions*p.m]...)
 	for j := range directions {
 		g.Solve(t[j*p.m : (j+1)*p.m])
 	}
-	return t, directions
+	return t
 }
 
 // trusted tests |μ| ≤ ‖S·W·t‖ against filterTol times the summands.
 func (p *ritz) trusted(t, mu []float64) bool {
 	for i, size := range mu {
-		sum := 0.0
+		squares := 0.0
 		for j, a := range t[i*p.m : (i+1)*p.m] {
-			sum += math.Abs(a) * p.norms[j]
+			squares += (a * p.norms[j]) * (a * p.norms[j])
 		}
-		if !isFinite(sum) || !isFinite(size) || size < filterTol*sum {
+		if !isFinite(squares) || !isFinite(size) || size < filterTol*math.Sqrt(squares) {
 			return false
 		}
 	}
