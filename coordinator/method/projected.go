@@ -199,5 +199,8 @@ func norm2(v []float64) float64 {
 	return math.Sqrt(sum)
 }
 
-// harmonic is replaced when the selection lands.
-func (p *projected) harmonic(d int) ([]float64, int) { return nil, 0 }
+// harmonic selects at most want directions for the next recycled space, from
+// sketched data alone.
+func (p *projected) harmonic(want int) (t []float64, directions int) {
+	return small.HarmonicRitz(p.qr, p.ls, p.space.su, want)
+}

@@ -22,7 +22,7 @@ var ErrReplay = errors.New("spacetest: the basis is kept as replay")
 // Problem is a system A·x = b with its scaling and preconditioner.
 type Problem struct {
 	Matrix      *csr.Matrix // square, in the units of the file; never written to
-	RowExponent []int       // D = 2^e by rows; nil: the identity
+	RowExponent []int16     // D = 2^e by rows; nil: the identity
 	Right       []float64
 	Guess       []float64 // x to begin with; nil: zero
 	// Apply sets dst = M⁻¹·src for the matrix D·A, or S·A·S when Symmetric; nil:
@@ -58,7 +58,7 @@ func New(p Problem) *Simple {
 	for i := range s.d {
 		s.d[i] = 1
 		if p.RowExponent != nil {
-			s.d[i] = math.Ldexp(1, p.RowExponent[i])
+			s.d[i] = math.Ldexp(1, int(p.RowExponent[i]))
 		}
 	}
 	if p.Guess != nil {

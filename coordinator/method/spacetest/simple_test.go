@@ -42,7 +42,7 @@ func ones(n int) []float64 {
 func TestSimpleSolvesByFullArnoldi(t *testing.T) {
 	const n = 12
 	ctx := context.Background()
-	s := New(Problem{Matrix: line(n, -1.5, -0.5), Right: ones(n), RowExponent: make([]int, n)})
+	s := New(Problem{Matrix: line(n, -1.5, -0.5), Right: ones(n), RowExponent: make([]int16, n)})
 	res, err := s.Start(ctx, method.Cycle{Seed: 1, SketchRows: 64, Zeta: 4, Capacity: n + 1, Window: n, Form: method.Double})
 	if err != nil {
 		t.Fatal(err)
@@ -108,9 +108,9 @@ func solveSquare(h [][]float64, beta float64) []float64 {
 func TestSimpleConjugateGradients(t *testing.T) {
 	const n = 40
 	ctx := context.Background()
-	exps := make([]int, n)
+	exps := make([]int16, n)
 	for i := range exps {
-		exps[i] = i % 3
+		exps[i] = int16(i % 3)
 	}
 	s := New(Problem{Matrix: line(n, -1, -1), Right: ones(n), RowExponent: exps, Symmetric: true})
 	rr, rz, _ := s.StartConjugate(ctx)
@@ -127,4 +127,12 @@ func TestSimpleConjugateGradients(t *testing.T) {
 	if got, _ := s.Check(ctx); got.True > 1e-12*got.Right {
 		t.Errorf("true residual %g of %g", got.True, got.Right)
 	}
+}
+
+func TestSimpleSuite(t *testing.T) {
+	Suite(t, 600, func(_ *testing.T, p Problem, _ bool) method.Space { return New(p) })
+}
+
+func TestSimpleConjugateSuite(t *testing.T) {
+	ConjugateSuite(t, 400, func(_ *testing.T, p Problem, _ bool) method.ConjugateSpace { return New(p) })
 }
