@@ -15,6 +15,9 @@ type square = [lanes * lanes]float64
 // 128·n flops. Every element is one chain of rounded products and rounded sums,
 // so that any vector width gives the same bits.
 func gramGo(w *square, v, c []float64) {
+	if len(v) == 0 {
+		return
+	}
 	for j := 0; j < lanes; j += 2 {
 		for k := 0; k < lanes; k += 4 {
 			gramPart(w, v, c, j, k)
@@ -54,6 +57,9 @@ func gramPart(w *square, v, c []float64, j, k int) {
 //
 // 128·n flops, the same bits whatever the vector width.
 func updateGo(c, v []float64, w *square) {
+	if len(v) == 0 {
+		return
+	}
 	for j := 0; j < lanes; j += 4 {
 		for k := 0; k < lanes; k += 2 {
 			updatePart(c, v, w, j, k)
