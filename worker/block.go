@@ -23,6 +23,7 @@ package worker
 import (
 	"context"
 	"fmt"
+	"slices"
 
 	"rowstead/partition"
 	"rowstead/partition/csr"
@@ -44,7 +45,7 @@ type Config struct {
 	Plan     *partition.BlockHalo
 	Exchange halo.Exchange
 	// RowExponent has e of D = 2^e for the own rows; nil: D is the identity.
-	RowExponent []int
+	RowExponent []int16
 	Right       []float64 // b in the units of the file; copied
 	Guess       []float64 // x to begin with; copied; nil: zero
 	Threads     int       // at least 1
@@ -65,6 +66,7 @@ type Block struct {
 	firstRow int
 	rows     int
 	halo     *halo.Halo // nil without neighbours
+	lower    int        // halo columns that belong to blocks before this one
 	team     *kernel.Team
 	strips   []kernel.Range
 
@@ -114,10 +116,9 @@ func New(c Config) *Block {
 	}
 	if c.Plan != nil && len(c.Plan.Columns)+len(c.Plan.Send) > 0 {
 		b.halo = halo.New(c.Plan, c.Exchange)
+		b.lower, _ = slices.BinarySearch(c.Plan.Columns, int32(c.FirstRow))
 	}
-	for i, e := range c.RowExponent {
-		b.given[i] = int16(e)
-	}
+	copy(b.given, c.RowExponent)
 	copy(b.right, c.Right)
 	copy(b.x, c.Guess)
 	return b

@@ -3,6 +3,7 @@ package worker
 import (
 	"context"
 	"math"
+	"slices"
 
 	"rowstead/worker/kernel"
 	"rowstead/worker/precond"
@@ -35,12 +36,54 @@ func (b *Block) Prepare(ctx context.Context, p Preparation) (precond.Report, err
 	options := p.Options
 	options.Symmetric = p.Conjugate
 	options.Each = func(count int, do func(i int)) { b.team.Run(count, do) }
+	b.turnRows(true)
 	factors, report, err := precond.Build(p.Precondition, b.matrix, options)
+	b.turnRows(false)
 	if err != nil {
 		return precond.Report{}, err
 	}
 	b.factors, b.identity = factors, report.Kind == precond.None
 	return report, nil
+}
+
+// turnRows puts the own columns of every row before its halo columns, which is
+// the order that preconditioners expect, or back into the order of global columns,
+// in which the halo columns of lower blocks come first. Products keep to the latter,
+// so that they have the bits of the product with the whole matrix.
+func (b *Block) turnRows(ownFirst bool) {
+	if b.lower == 0 {
+		return
+	}
+	b.each(func(_ int, r kernel.Range) {
+		for i := r.Lo; i < r.Hi; i++ {
+			cols, vals := b.matrix.Row(i)
+			from, to, end := len(cols), 0, 0 // lower halo columns [from, to), [0, end) turns
+			for k, c := range cols {
+				if j := int(c); j >= b.rows && j < b.rows+b.lower {
+					from, to = min(from, k), k+1
+				}
+				if int(c) < b.rows+b.lower {
+					end = k + 1
+				}
+			}
+			switch {
+			case to == 0:
+			case ownFirst: // [lower own] to [own lower]
+				turn(cols[:end], to)
+				turn(vals[:end], to)
+			default:
+				turn(cols[:end], from)
+				turn(vals[:end], from)
+			}
+		}
+	})
+}
+
+// turn moves the first k elements of v behind the others.
+func turn[E any](v []E, k int) {
+	slices.Reverse(v[:k])
+	slices.Reverse(v[k:])
+	slices.Reverse(v)
 }
 
 // symmetricExponents returns e of S = 2^e for rows and for columns with halo, so

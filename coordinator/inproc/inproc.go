@@ -29,7 +29,7 @@ type Problem struct {
 	// rewritten. Whoever needs A afterwards reads it again.
 	Matrix *csr.Matrix
 	// RowExponent has e of the row scaling D = 2^e; nil: none.
-	RowExponent []int
+	RowExponent []int16
 	Cuts        partition.RowCuts
 	Right       []float64 // b; copied
 	Guess       []float64 // x to begin with; copied; nil: zero

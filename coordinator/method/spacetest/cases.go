@@ -30,15 +30,15 @@ func grid(nx, ny int, decades float64, rng *rand.Rand) *csr.Matrix {
 	return t.Matrix(nx*ny, nx*ny)
 }
 
-// irregular has a few entries anywhere in a row, one row without a diagonal and
-// one without any entry.
-func irregular(n int, rng *rand.Rand) *csr.Matrix {
+// irregular has a few entries anywhere in a row. With gaps one row has no diagonal
+// and one no entry at all.
+func irregular(n int, gaps bool, rng *rand.Rand) *csr.Matrix {
 	var t csr.Triplets
 	for i := range n {
-		if i == n/3 {
+		if gaps && i == n/3 {
 			continue
 		}
-		if i != n/2 {
+		if !gaps || i != n/2 {
 			t.Add(i, i, 3+rng.Float64())
 		}
 		for range 1 + rng.IntN(4) {
@@ -76,6 +76,16 @@ func definite(nx, ny int, rng *rand.Rand) *csr.Matrix {
 	return t.Matrix(n, n)
 }
 
+// Definite is a symmetric positive definite problem with a diagonal over several
+// decades, scaled for conjugate gradients, with a guess.
+func Definite(nx, ny int) Problem {
+	rng := rand.New(rand.NewPCG(3, 5))
+	p := Problem{Matrix: definite(nx, ny, rng), Symmetric: true}
+	p.RowExponent = symmetricScale(p.Matrix)
+	p.Right, p.Guess = normal(nx*ny, rng), normal(nx*ny, rng)
+	return p
+}
+
 // normal draws n numbers.
 func normal(n int, rng *rand.Rand) []float64 {
 	v := make([]float64, n)
@@ -107,7 +117,7 @@ func symmetricScale(m *csr.Matrix) []int16 {
 }
 
 // byDiagonal returns the preconditioner that divides by the diagonal of D·A, or
-// of S·A·S, and leaves rows with none as they are.
+// of S·A·S, which has no zero.
 func byDiagonal(m *csr.Matrix, exponent []int16, symmetric bool) func(dst, src []float64) {
 	d := make([]float64, m.Rows)
 	for i := range d {
@@ -115,9 +125,7 @@ func byDiagonal(m *csr.Matrix, exponent []int16, symmetric bool) func(dst, src [
 		if symmetric {
 			e *= 2
 		}
-		if d[i] = math.Ldexp(m.At(i, i), e); d[i] == 0 {
-			d[i] = 1
-		}
+		d[i] = math.Ldexp(m.At(i, i), e)
 	}
 	return func(dst, src []float64) {
 		for i := range dst {

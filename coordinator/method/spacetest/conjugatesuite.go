@@ -3,7 +3,6 @@ package spacetest
 import (
 	"context"
 	"math"
-	"math/rand/v2"
 	"testing"
 
 	"rowstead/coordinator/method"
@@ -17,11 +16,8 @@ type ConjugateFactory func(t *testing.T, p Problem, diagonal bool) method.Conjug
 // the steps of the twin to rounding, and their answer has the residual that they
 // say.
 func ConjugateSuite(t *testing.T, rows int, make ConjugateFactory) {
-	rng := rand.New(rand.NewPCG(3, 5))
-	side := 37
-	p := Problem{Matrix: definite(side, rows/side+1, rng), Symmetric: true}
-	n := p.Matrix.Rows
-	p.RowExponent, p.Right, p.Guess = symmetricScale(p.Matrix), normal(n, rng), normal(n, rng)
+	const side = 37
+	p := Definite(side, rows/side+1)
 	for _, diagonal := range []bool{false, true} {
 		name := "plain"
 		if diagonal {

@@ -29,6 +29,7 @@ func Suite(t *testing.T, rows int, make Factory) {
 	t.Run("try leaves everything alone", s.tryLeavesAlone)
 	t.Run("keep makes check what try said", s.keepThenCheck)
 	t.Run("extreme right sides", s.extremes)
+	t.Run("the worst rows are named", s.worstRows)
 	t.Run("what is not finite is said", s.notFinite)
 	t.Run("the same bits every time", s.sameBits)
 	t.Run("refusals", s.refusals)
@@ -54,15 +55,15 @@ func (s suite) cases() map[string]suiteCase {
 	plain.RowExponent, plain.Right = rowScale(plain.Matrix), normal(n, rng)
 	guessed := plain
 	guessed.Guess = normal(n, rng)
-	loose := Problem{Matrix: irregular(s.rows+3, rng)}
+	loose := Problem{Matrix: irregular(s.rows+3, true, rng)}
 	loose.RowExponent, loose.Right = rowScale(loose.Matrix), normal(s.rows+3, rng)
-	unscaled := loose
-	unscaled.RowExponent = make([]int16, s.rows+3)
+	unscaled := Problem{Matrix: irregular(s.rows+3, false, rng), RowExponent: make([]int16, s.rows+3)}
+	unscaled.Right = normal(s.rows+3, rng)
 	return map[string]suiteCase{
-		"grid with bad rows":         {plain, false},
-		"with a guess, diagonal":     {guessed, true},
-		"irregular with empty rows":  {loose, false},
-		"irregular, diagonal, plain": {unscaled, true},
+		"grid with bad rows":          {plain, false},
+		"with a guess, diagonal":      {guessed, true},
+		"irregular with an empty row": {loose, false},
+		"irregular, diagonal, plain":  {unscaled, true},
 	}
 }
 
@@ -190,6 +191,9 @@ func must[T any](v T, err error) func(t *testing.T) T {
 	}
 }
 
+// rowOf begins the names of answers that are row numbers.
+const rowOf = "row of "
+
 func seeResiduals(see func(string, ...float64), verb string, r method.Residuals) {
 	see(verb+".Inner", r.Inner, r.InnerRight)
 	see(verb+".True", r.True, r.Right)
@@ -199,7 +203,8 @@ func seeResiduals(see func(string, ...float64), verb string, r method.Residuals)
 	see(verb+".Max", r.ResidualMax, r.RightMax, r.SolutionMax, r.MatrixMax)
 	see(verb+".Solution", r.Solution, r.InnerMatrix)
 	for _, w := range r.Worst {
-		see(verb+".Worst", w.Error, float64(w.Row))
+		see(verb+".Worst", w.Error)
+		see(rowOf+verb, float64(w.Row))
 	}
 	finite := 0.0
 	if r.Finite {
