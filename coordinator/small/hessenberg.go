@@ -55,6 +55,10 @@ func (h *Hessenberg) Triangle() Triangle {
 	return Triangle{h.packed[:h.columns*(h.columns+1)/2], h.columns}
 }
 
+// RightSide is a copy of the leading Columns entries of Ω·g, the right side that
+// belongs to Triangle.
+func (h *Hessenberg) RightSide() []float64 { return append([]float64(nil), h.g[:h.columns]...) }
+
 // Append adds a column of R·H, which is copied: length Columns()+2, or
 // Columns()+1 when the step broke down and its last entry is zero.
 func (h *Hessenberg) Append(col []float64) {

@@ -15,40 +15,27 @@ type square = [lanes * lanes]float64
 // 128·n flops. Every element is one chain of rounded products and rounded sums,
 // so that any vector width gives the same bits.
 func gramGo(w *square, v, c []float64) {
-	if len(v) == 0 {
-		return
-	}
 	for j := 0; j < lanes; j += 2 {
-		for k := 0; k < lanes; k += 4 {
+		for k := 0; k < lanes; k += 2 {
 			gramPart(w, v, c, j, k)
 		}
 	}
 }
 
-// gramPart is gramGo for columns j, j+1 of V and k … k+3 of C.
+// gramPart is gramGo for columns j, j+1 of V and k, k+1 of C. Four sums and
+// their products are what the compiler keeps in registers.
 func gramPart(w *square, v, c []float64, j, k int) {
-	a, b := w[lanes*j+k:][:4:4], w[lanes*(j+1)+k:][:4:4]
-	a0, a1, a2, a3 := a[0], a[1], a[2], a[3]
-	b0, b1, b2, b3 := b[0], b[1], b[2], b[3]
-	v, c = v[j:], c[k:]
-	for len(v) >= 2 && len(c) >= 4 {
-		v0, v1 := v[0], v[1]
-		c0, c1, c2, c3 := c[0], c[1], c[2], c[3]
-		a0 += float64(v0 * c0)
-		a1 += float64(v0 * c1)
-		a2 += float64(v0 * c2)
-		a3 += float64(v0 * c3)
-		b0 += float64(v1 * c0)
-		b1 += float64(v1 * c1)
-		b2 += float64(v1 * c2)
-		b3 += float64(v1 * c3)
-		if len(v) < lanes || len(c) < lanes {
-			break
-		}
-		v, c = v[lanes:], c[lanes:]
+	a, b := w[lanes*j+k:][:2:2], w[lanes*(j+1)+k:][:2:2]
+	a0, a1, b0, b1 := a[0], a[1], b[0], b[1]
+	v = v[:len(c)]
+	for i := 0; i <= len(c)-lanes; i += lanes {
+		x0, x1, y0, y1 := v[i+j], v[i+j+1], c[i+k], c[i+k+1]
+		a0 += float64(x0 * y0)
+		a1 += float64(x0 * y1)
+		b0 += float64(x1 * y0)
+		b1 += float64(x1 * y1)
 	}
-	a[0], a[1], a[2], a[3] = a0, a1, a2, a3
-	b[0], b[1], b[2], b[3] = b0, b1, b2, b3
+	a[0], a[1], b[0], b[1] = a0, a1, b0, b1
 }
 
 // updateGo subtracts V·W from C for two strips of the same number of rows n:
