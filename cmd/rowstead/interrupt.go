@@ -1,0 +1,80 @@
+package main
+
+import (
+	"fmt"
+	"os"
+	"path/filepath"
+	"runtime"
+	"strings"
+	"sync/atomic"
+
+	"rowstead/coordinator/report"
+)
+
+// interrupt is what the first Ctrl-C sets and the method looks at before every
+// step.
+type interrupt struct {
+	asked atomic.Bool
+	// gentle says that something is worth keeping: a run is stepping, or its
+	// answer is being checked and written.
+	gentle atomic.Bool
+}
+
+// Stop is method.Options.Stop.
+func (i *interrupt) stop() string {
+	if i.asked.Load() {
+		return interruptedText
+	}
+	return ""
+}
+
+const interruptedText = "interrupted"
+
+// watch ends the program on signals: the first lets a run that has an answer
+// keep it, the second, or the first when there is nothing to keep, ends at once
+// without half-written files. exit is os.Exit.
+func (a *app) watch(signals <-chan os.Signal, exit func(int)) {
+	for range signals {
+		if a.interrupt.gentle.Load() && !a.interrupt.asked.Swap(true) {
+			a.screen.clear()
+			fmt.Fprintln(a.stderr, "rowstead: stopping after this step to keep the answer so far; once more ends at once")
+			continue
+		}
+		a.abandon()
+		a.screen.clear()
+		fmt.Fprintln(a.stderr, "rowstead: interrupted; nothing was left half-written")
+		if a.json {
+			r := report.New("solve")
+			r.Reason, r.Error = interruptedText, "interrupted before there was an answer to keep"
+			a.sayObject(r.JSON())
+		}
+		exit(statusInterrupted)
+		return
+	}
+}
+
+// abandon removes what is half-written: files of our own writer, and the
+// temporary ones beside the outputs, which are named after them.
+func (a *app) abandon() {
+	a.pending.Abandon()
+	a.mu.Lock()
+	outputs := append([]string(nil), a.outputs...)
+	a.mu.Unlock()
+	for _, path := range outputs {
+		parts, err := filepath.Glob(escape(path) + ".????????.part")
+		if err != nil {
+			continue // a name that is no pattern has no such files
+		}
+		for _, part := range parts {
+			os.Remove(part) // nothing more can be done about one that stays
+		}
+	}
+}
+
+// escape makes a path a pattern that matches itself alone.
+func escape(path string) string {
+	if runtime.GOOS == "windows" {
+		return path
+	}
+	return strings.NewReplacer(`\`, `\\`, "*", `\*`, "?", `\?`, "[", `\[`).Replace(path)
+}

@@ -1,0 +1,190 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"strings"
+	"time"
+
+	"rowstead/cmd/internal/memory"
+	"rowstead/cmd/internal/place"
+	"rowstead/cmd/internal/records"
+	"rowstead/cmd/internal/replace"
+	"rowstead/coordinator"
+	"rowstead/coordinator/report"
+)
+
+// session is one solve from its flags to its exit status, new or carried on.
+type session struct {
+	flags solveFlags
+	asked map[string]string
+	run   records.Run    // the folder; none when ID is empty
+	old   *report.Record // of the run that is carried on, or nil
+	rec   *report.Record
+}
+
+// solve runs a session and prints its result.
+func (a *app) solve(s *session) error {
+	if err := s.checkOutputs(); err != nil {
+		return err
+	}
+	s.rec = report.New("solve")
+	s.rec.Program, s.rec.Asked = program(), s.asked
+	s.rec.Folder, _ = os.Getwd() // only told; an unknown one is empty
+	if s.old != nil {
+		s.rec.ID, s.rec.Path, s.rec.Resumed = s.old.ID, s.old.Path, s.old.Resumed+1
+	}
+	a.hold(s.rec, s.flags.job.Out, coordinator.ShortName(s.flags.job.Out))
+	err := coordinator.Run(context.Background(), s.flags.job, a.rim(s), s.rec)
+	a.interrupt.gentle.Store(true) // what follows is short and should be whole
+	a.screen.clear()
+	if err != nil {
+		s.rec.State = report.BrokenOff
+		s.rec.Error = oneLine(err)
+		a.save(s)
+		return err
+	}
+	return a.conclude(s)
+}
+
+// hold tells the interrupt handler what it may have to clean up and print.
+func (a *app) hold(rec *report.Record, outputs ...string) {
+	a.mu.Lock()
+	defer a.mu.Unlock()
+	a.record, a.outputs = rec, outputs
+}
+
+// rim is what the coordinator may ask of this program.
+func (a *app) rim(s *session) coordinator.Rim {
+	return coordinator.Rim{
+		Place: place.InProcess,
+		Now:   time.Now,
+		FreeMemory: func() (int64, error) {
+			state, err := memory.Now()
+			return state.Free, err
+		},
+		PeakMemory: memory.Peak,
+		Phase: func(state string) {
+			s.rec.State = state
+			a.interrupt.gentle.Store(state == report.Stepping || state == report.Checking)
+			if s.rec.ID != "" {
+				a.save(s)
+			}
+		},
+		Opened: func(*report.Record) { a.openRun(s) },
+		Progress: func(p report.Progress) {
+			if !a.quiet {
+				a.screen.tell(p.Sentence(), time.Now())
+			}
+		},
+		Stop: a.interrupt.stop,
+		Snapshot: func(done int, x [][]float64) error {
+			if s.run.ID == "" {
+				return errors.New("there is no folder for records")
+			}
+			return s.run.SaveSnapshot(records.Snapshot{Done: done, X: x})
+		},
+	}
+}
+
+// openRun makes the folder of the run. Without one the run goes on: the answer
+// matters more than its record.
+func (a *app) openRun(s *session) {
+	if s.run.ID != "" {
+		return
+	}
+	store, err := records.Open(&a.pending)
+	if err == nil {
+		s.run, err = store.Create(s.rec.Started, stem(s.flags.job.Matrix))
+	}
+	if err != nil {
+		s.run = records.Run{}
+		fmt.Fprintf(a.stderr, "rowstead: no record of this run is kept: %s; set %s to a folder that can be written\n", oneLine(err), records.HomeVariable)
+		return
+	}
+	s.rec.ID, s.rec.Path = s.run.ID, s.run.RecordPath()
+}
+
+// save writes the record where there is a folder for it.
+func (a *app) save(s *session) {
+	if s.run.ID == "" {
+		return
+	}
+	if err := s.run.Save(s.rec); err != nil {
+		fmt.Fprintf(a.stderr, "rowstead: the record could not be kept: %s\n", oneLine(err))
+		s.run, s.rec.ID, s.rec.Path = records.Run{}, "", ""
+	}
+}
+
+// conclude keeps the record, writes the report and prints the result.
+func (a *app) conclude(s *session) error {
+	s.rec.State = report.Finished
+	status := statusMet
+	switch {
+	case s.rec.Reason == coordinator.ReasonInterrupted:
+		s.rec.State, status = report.BrokenOff, statusInterrupted
+	case s.rec.Verdict != report.Met:
+		status = statusShort
+	}
+	if s.run.ID != "" && s.rec.Verdict == report.Met {
+		if err := s.run.DropSnapshot(); err != nil {
+			fmt.Fprintf(a.stderr, "rowstead: the old snapshot stays: %s\n", oneLine(err))
+		}
+	}
+	if s.rec.Verdict != report.Met && s.run.ID != "" {
+		s.rec.Advice = strings.ReplaceAll(s.rec.Advice, "rowstead resume", "rowstead resume "+s.run.ID)
+	}
+	a.save(s)
+	if s.flags.report != "" {
+		if err := a.writeReport(s.flags.report, s.rec, s.flags.job.Overwrite); err != nil {
+			return err
+		}
+	}
+	a.tell(s.rec)
+	if status != statusMet {
+		return &verdictError{status}
+	}
+	return nil
+}
+
+// tell prints the result: one object, or the summary.
+func (a *app) tell(rec *report.Record) {
+	switch {
+	case a.json:
+		a.sayObject(rec.JSON())
+	case a.quiet:
+		head, _, _ := strings.Cut(rec.Text(), "\n")
+		fmt.Fprintf(a.stdout, "%s %s\n", head, report.Caution)
+	default:
+		fmt.Fprint(a.stdout, rec.Text())
+	}
+}
+
+// checkOutputs refuses outputs that exist or cannot be written, before any work.
+func (s *session) checkOutputs() error {
+	j := s.flags.job
+	for _, path := range []string{j.Out, coordinator.ShortName(j.Out)} {
+		if exists(path) && !j.Overwrite && !(j.OwnShort && path != j.Out) {
+			return usage("%s: it exists already; --overwrite replaces it, --out FILE writes elsewhere", path)
+		}
+	}
+	if status, err := os.Stat(j.Out); err == nil && status.IsDir() {
+		return usage("%s: it is a folder; --out takes the name of a file", j.Out)
+	}
+	if err := replace.Probe(j.Out); err != nil {
+		return usage("the answer cannot be written there: %w; --out FILE writes elsewhere", err)
+	}
+	if s.flags.report == "" {
+		return nil
+	}
+	return checkReport(s.flags.report, j.Overwrite)
+}
+
+// stem is the name of a file without folder and endings.
+func stem(path string) string {
+	name, _, _ := strings.Cut(filepath.Base(path), ".")
+	return name
+}

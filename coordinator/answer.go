@@ -1,0 +1,111 @@
+package coordinator
+
+import (
+	"fmt"
+	"math"
+	"path/filepath"
+	"strings"
+
+	"rowstead/coordinator/report"
+	"rowstead/partition/matfile"
+)
+
+// ShortName is where the best answer of a run goes that fell short: "x.mtx"
+// becomes "x.short.mtx", "x.mtx.gz" becomes "x.short.mtx.gz".
+func ShortName(path string) string {
+	folder, name := filepath.Split(path)
+	ending := filepath.Ext(name)
+	if packed := strings.ToLower(ending); packed == ".gz" || packed == ".zst" {
+		ending = filepath.Ext(strings.TrimSuffix(name, ending)) + ending
+	}
+	return folder + strings.TrimSuffix(name, ending) + ".short" + ending
+}
+
+// finish writes the answer and keeps a snapshot of one that can be carried on.
+func (r *runner) finish() error {
+	r.rim.Phase(report.Checking)
+	r.knownError()
+	if r.rec.Verdict != report.Met {
+		if err := r.rim.Snapshot(r.done(), r.x); err != nil {
+			r.event(fmt.Sprintf("the snapshot could not be kept: %v", err))
+		}
+	}
+	return r.timed(&r.rec.Seconds.Write, r.write)
+}
+
+// done counts the right sides that are finished.
+func (r *runner) done() int {
+	for c, s := range r.rec.Sides {
+		if s.Verdict != report.Met {
+			return c
+		}
+	}
+	return len(r.rec.Sides)
+}
+
+// write writes the answer. If that fails the answer is kept as a snapshot and
+// the error says so.
+func (r *runner) write() error {
+	path, overwrite := r.job.Out, r.job.Overwrite
+	if r.rec.Verdict != report.Met {
+		path, overwrite = ShortName(path), overwrite || r.job.OwnShort
+	}
+	d := &matfile.Dense{Rows: len(r.x[0]), Cols: len(r.x), Complex: r.sys.complex, Values: make([]float64, 0, len(r.x)*len(r.x[0]))}
+	for _, x := range r.x {
+		d.Values = append(d.Values, x...)
+	}
+	comment := []string{fmt.Sprintf("rowstead %s: residual %.2e, rows scaled %.2e, tolerance %.0e",
+		r.rec.Verdict, float64(r.rec.Residuals.True), float64(r.rec.Residuals.Scaled), r.job.Tolerance)}
+	err := matfile.WriteDense(path, d, matfile.WriteOptions{Overwrite: overwrite, Comment: comment})
+	if err != nil {
+		r.rec.Verdict = report.None
+		if kept := r.rim.Snapshot(r.done(), r.x); kept == nil && r.rec.ID != "" {
+			return fmt.Errorf("%w; the answer is kept: rowstead resume %s --out PATH writes it elsewhere", err, r.rec.ID)
+		}
+		return err
+	}
+	r.rec.Answer = path
+	r.rec.AnswerHash, err = matfile.Hash(path)
+	return err
+}
+
+// knownError compares a trial's answer with the one it was made from.
+func (r *runner) knownError() {
+	if !r.job.Trial {
+		return
+	}
+	difference, size := 0.0, 0.0
+	for i, v := range r.x[0] {
+		known := 1.0
+		if r.sys.complex && i%2 == 1 {
+			known = 0
+		}
+		difference, size = math.Hypot(difference, v-known), size+known
+	}
+	r.rec.KnownError = report.Number(difference / math.Sqrt(size))
+}
+
+// emptyAgainst lists the rows of the file that have no nonzero entry and a
+// right side that is not zero.
+func (s *system) emptyAgainst(b []float64) []int {
+	var rows []int
+	for _, i := range s.empty {
+		if b[i] != 0 {
+			if s.complex {
+				i /= 2
+			}
+			rows = append(rows, i)
+		}
+	}
+	return rows
+}
+
+// findEmpty remembers the rows without a nonzero entry.
+func (s *system) findEmpty() {
+	for i := range s.matrix.Rows {
+		_, vals := s.matrix.Row(i)
+		if !nonzero(vals) {
+			s.empty = append(s.empty, i)
+		}
+	}
+}

@@ -1,0 +1,208 @@
+package coordinator
+
+import (
+	"context"
+	"fmt"
+	"strings"
+
+	"rowstead/coordinator/method"
+	"rowstead/coordinator/report"
+)
+
+// solve solves for every right side in turn.
+func (r *runner) solve(ctx context.Context) error {
+	r.x = make([][]float64, len(r.sys.right))
+	for c := range r.sys.right {
+		r.x[c] = make([]float64, len(r.sys.right[c]))
+		if r.sys.guess != nil {
+			copy(r.x[c], r.sys.guess[c])
+		}
+	}
+	for c, b := range r.sys.right {
+		r.column = c
+		r.pace = report.Pace{Tolerance: r.job.Tolerance}
+		side, err := r.solveSide(ctx, c, b)
+		if err != nil {
+			return err
+		}
+		r.rec.Sides = append(r.rec.Sides, side)
+		r.before += side.Products
+		if side.Reason == ReasonInterrupted || side.Reason == ReasonTime {
+			break
+		}
+	}
+	r.leaveRest()
+	r.tellChoices()
+	r.rec.Settle()
+	r.rec.Workers = r.placed.Workers()
+	if r.placed.steps > 0 {
+		r.rec.Traffic.CoordinatorBytesPerStep = report.Number(float64(r.placed.bytes) / float64(r.placed.steps))
+		r.rec.Traffic.HaloBytesPerStep = report.Number(8 * r.placed.HaloEntries())
+	}
+	if r.placed.failed != nil {
+		r.event(fmt.Sprintf("a snapshot could not be kept: %v", r.placed.failed))
+	}
+	return nil
+}
+
+// leaveRest gives the right sides that were not reached their verdict.
+func (r *runner) leaveRest() {
+	for c := len(r.rec.Sides); c < len(r.sys.right); c++ {
+		last := r.rec.Sides[len(r.rec.Sides)-1]
+		r.rec.Sides = append(r.rec.Sides, report.Side{Column: c, Verdict: report.Short, Reason: last.Reason, Method: last.Method, Residuals: report.Unmeasured()})
+	}
+}
+
+// solveSide solves for one right side, changing the method where the first one
+// cannot go on, and checks the answer.
+func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side, error) {
+	side := report.Side{Column: c}
+	start := r.x[c]
+	if !nonzero(b) {
+		start = make([]float64, len(b)) // A·x = 0: x = 0 is the answer
+	}
+	r.placed.SetRight(r.forward(b))
+	r.placed.SetGuess(r.forward(start))
+	var last method.Result
+	err := r.timed(&r.rec.Seconds.Solve, func() error {
+		var err error
+		last, err = r.attempt(ctx, &side)
+		if err == nil && r.change(last) {
+			if err = r.placed.Prepare(ctx, r.plan.precondition, false); err == nil {
+				r.plan.conjugate = false
+				r.event("from conjugate gradients to another method: " + last.Reason)
+				last, err = r.attempt(ctx, &side)
+			}
+		}
+		return err
+	})
+	if err != nil {
+		return side, err
+	}
+	r.rim.Phase(report.Checking)
+	err = r.timed(&r.rec.Seconds.Check, func() error { return r.check(ctx, last, &side) })
+	r.rim.Phase(report.Stepping)
+	return side, err
+}
+
+func nonzero(b []float64) bool {
+	for _, v := range b {
+		if v != 0 {
+			return true
+		}
+	}
+	return false
+}
+
+// change says that conjugate gradients, chosen by the program, must give way.
+func (r *runner) change(last method.Result) bool {
+	return automatic(r.job.Method) && r.plan.conjugate && !last.Met &&
+		(last.Reason == method.ReasonIndefinite || last.Reason == method.ReasonStagnated || last.Reason == method.ReasonNotFinite)
+}
+
+// attempt runs one method and adds its counts to the side's.
+func (r *runner) attempt(ctx context.Context, side *report.Side) (method.Result, error) {
+	if r.plan.conjugate && automatic(r.job.Method) && !r.definite() {
+		if err := r.placed.Prepare(ctx, r.plan.precondition, false); err != nil {
+			return method.Result{}, err
+		}
+		r.plan.conjugate = false
+	}
+	base := r.before + side.Products
+	result, err := method.Solve(ctx, r.placed, r.options(base))
+	side.Method = result.Method
+	side.Steps, side.FullSteps = side.Steps+result.Steps, side.FullSteps+result.FullSteps
+	side.Cycles, side.Products = side.Cycles+result.Cycles, side.Products+result.Products
+	for _, e := range result.Story {
+		r.rec.Story = append(r.rec.Story, report.Event{Second: r.since(r.begun), Column: r.column, Cycle: e.Cycle, Step: e.Step, Products: base + e.Products, Text: e.Text})
+		if why, found := strings.CutPrefix(e.Text, "the "+result.Method+" method: "); found {
+			r.why["method"] = why
+		}
+	}
+	return result, err
+}
+
+// definite says that every block's preconditioner is symmetric positive
+// definite.
+func (r *runner) definite() bool {
+	for _, f := range r.placed.Factors() {
+		if !f.Definite {
+			return false
+		}
+	}
+	return true
+}
+
+// options are those of the method.
+func (r *runner) options(base int) method.Options {
+	o := method.Options{
+		Method: r.job.Method, Tolerance: r.job.Tolerance, Window: r.job.Window, Cycle: r.job.Cycle,
+		SketchRows: r.job.SketchRows, Seed: r.job.Seed, Form: r.plan.form.basis,
+		Symmetric: r.plan.conjugate, DefinitePreconditioner: r.plan.conjugate,
+		Stop: r.rim.Stop, Observe: func(p method.Progress) { r.observe(base, p) },
+	}
+	if o.Cycle == 0 && r.plan.form.cycle != longestCycle {
+		o.Cycle = r.plan.form.cycle
+	}
+	if r.job.Threads > 1 {
+		o.Behind = behind
+	}
+	if limit := r.job.TimeLimit; limit > 0 {
+		o.Stop = func() string {
+			if reason := r.rim.Stop(); reason != "" {
+				return reason
+			}
+			if r.rim.Now().Sub(r.begun) >= limit {
+				return ReasonTime
+			}
+			return ""
+		}
+	}
+	return o
+}
+
+// behind runs a task beside the recurrence.
+func behind(task func()) (wait func()) {
+	done := make(chan struct{})
+	go func() {
+		defer close(done)
+		task()
+	}()
+	return func() { <-done }
+}
+
+// curvePoints is how many points of the convergence are kept at most.
+const curvePoints = 2000
+
+// observe tells of progress and keeps a point of the picture.
+func (r *runner) observe(base int, p method.Progress) {
+	second := r.since(r.begun)
+	estimate := report.Number(p.Estimate)
+	if p.Estimate <= 0 {
+		estimate = report.Unknown()
+	}
+	left := report.Number(max(p.True, p.Scaled))
+	if len(r.rec.Curve) == curvePoints {
+		for i := range curvePoints / 2 {
+			r.rec.Curve[i] = r.rec.Curve[2*i+1]
+		}
+		r.rec.Curve = r.rec.Curve[:curvePoints/2]
+	}
+	r.rec.Curve = append(r.rec.Curve, report.Point{Products: base + p.Products, Second: second, True: left, Estimate: estimate})
+	now := left
+	if estimate.Finite() {
+		now = min(left, estimate)
+	}
+	r.pace.Add(float64(second), now)
+	r.rim.Progress(report.Progress{
+		Products: base + p.Products, Left: report.Number(p.True), Estimated: estimate,
+		Remaining: r.pace.Remaining(), Column: r.column, Columns: len(r.sys.right),
+	})
+}
+
+// snapshot keeps all answers so far.
+func (r *runner) snapshot() error {
+	all := append([][]float64(nil), r.x...)
+	all[r.column] = r.backward(r.placed.Solution())
+	return r.rim.Snapshot(r.column, all)
+}
