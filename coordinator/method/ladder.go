@@ -32,12 +32,18 @@ const (
 	replayCondition = 1e8
 )
 
+// calmBasis is a basis condition that shows a whole cycle was built with more
+// full steps than it needed.
+const calmBasis = 1e2
+
 // ladder remembers over the cycles how carefully the basis must be built.
 type ladder struct {
 	mode       mode
 	level      int // of the next cycle's start
+	least      int // no start below it: one there has lost its basis
 	window     int
 	stagnation int
+	fixed      bool // window steps only: replayed vectors allow no others
 }
 
 // outcome is what a cycle's end says about its estimates.
@@ -46,17 +52,22 @@ type outcome struct {
 	reduction float64 // of ‖D·r‖
 	gap       float64 // true residual over the debiased estimate
 	condEnded bool
-	level     int // reached
-	raisedAt  int // step of the last raise, 0: none
+	condition float64 // of the basis at the end
+	start     int     // level at the start
+	level     int     // reached
+	raisedAt  int     // step of the last raise, 0: none
 	steps     int
 }
 
 // climb draws the conclusions; it reports whether the run has stagnated.
 func (l *ladder) climb(o outcome) (stagnated bool) {
-	if l.mode == windowMode {
+	if l.mode == windowMode && !l.fixed {
 		switch {
 		case o.condEnded:
 			l.level, l.window = o.level, min(maxWindow, 2*l.window)
+			l.least = max(l.least, min(o.start+1, len(levelConditions)))
+		case o.level > l.least && o.level == o.start && o.condition < calmBasis:
+			l.level = o.level - 1
 		case o.raisedAt > 0 && 10*o.raisedAt < 7*o.steps:
 			l.level = max(0, o.level-1)
 		}
@@ -77,7 +88,7 @@ func (l *ladder) climb(o outcome) (stagnated bool) {
 }
 
 func (l *ladder) next() {
-	if l.mode < classicalMode {
+	if l.mode < classicalMode && !l.fixed {
 		l.mode++
 	}
 }

@@ -38,10 +38,15 @@ func solveOrthogonal(ctx context.Context, sp Space, o Options, res *Result) erro
 		} else {
 			still = 0
 		}
-		if still == 3 {
-			if r.reason, err = r.whyStagnated(ctx); err != nil {
-				return err
-			}
+		if still == 0 {
+			continue
+		}
+		reason, err := r.whyStagnated(ctx)
+		if err != nil {
+			return err
+		}
+		if still == 3 || reason != ReasonStagnated {
+			r.reason = reason
 			break
 		}
 	}
@@ -131,9 +136,14 @@ func (r *run) orthogonalCorrect(ctx context.Context, ls *small.Hessenberg, end s
 		return err
 	}
 	r.res.Products += products + 1
+	if !better(got, r.residuals.Inner) {
+		if got, err = r.tryTruncated(ctx, ls, got); err != nil {
+			return err
+		}
+	}
 	r.res.Story = append(r.res.Story, Event{Cycle: r.res.Cycles, Step: len(y), Products: r.res.Products,
 		Text: fmt.Sprintf("%s: true residual %.2e, scaled %.2e", end, got.TrueResidual(), got.ScaledResidual())})
-	if !got.Finite || got.Inner >= r.residuals.Inner {
+	if !better(got, r.residuals.Inner) {
 		return nil
 	}
 	r.residuals = got

@@ -29,7 +29,7 @@ type run struct {
 // accurate randomized algorithms for linear systems and eigenvalue problems"
 // (arXiv:2111.00113).
 func solveSketched(ctx context.Context, sp Space, o Options, res *Result) error {
-	r := &run{sp: sp, o: o, res: res, ladder: ladder{window: o.Window}}
+	r := &run{sp: sp, o: o, res: res, ladder: ladder{window: o.Window, fixed: o.Form == Replay}}
 	res.SketchRows = o.SketchRows
 	for {
 		conf := r.configure()
@@ -50,8 +50,7 @@ func solveSketched(ctx context.Context, sp Space, o Options, res *Result) error 
 			break
 		}
 		if stagnated {
-			r.reason, err = r.whyStagnated(ctx)
-			if err != nil {
+			if r.reason, err = r.whyStagnated(ctx); err != nil {
 				return err
 			}
 			break
@@ -113,9 +112,16 @@ func (r *run) cycle(ctx context.Context, conf Cycle) (stagnated bool, err error)
 	if err != nil {
 		return false, err
 	}
-	o.level, o.raisedAt, o.steps, o.condEnded = c.level, c.raisedAt, c.steps, end == endCondition
+	o.start, o.level, o.raisedAt = r.ladder.level, c.level, c.raisedAt
+	o.steps, o.condEnded, o.condition = c.steps, end == endCondition, c.last.condition
 	was := r.ladder
 	stagnated = r.ladder.climb(o)
+	if r.ladder.stagnation > 0 && !stagnated {
+		// Another rung of the ladder cannot help against these.
+		if stagnated, err = r.hopeless(ctx); err != nil {
+			return false, err
+		}
+	}
 	if was.mode != r.ladder.mode {
 		r.note(c, fmt.Sprintf("from %v to %v", was.mode, r.ladder.mode))
 	}
@@ -138,7 +144,12 @@ func (r *run) correct(ctx context.Context, c *cycle, end string) (outcome, error
 		return outcome{}, err
 	}
 	r.res.Products += products + 1
-	o := outcome{accepted: res.Finite && res.Inner < c.beta, reduction: res.Inner / c.beta, gap: 1}
+	if !better(res, c.beta) && c.conf.Form != Replay {
+		if res, err = r.tryTruncated(ctx, r.small.ls, res); err != nil {
+			return outcome{}, err
+		}
+	}
+	o := outcome{accepted: better(res, c.beta), reduction: res.Inner / c.beta, gap: 1}
 	if a.debiased > 1e-12*c.beta {
 		o.gap = res.Inner / a.debiased
 	}
@@ -154,6 +165,35 @@ func (r *run) correct(ctx context.Context, c *cycle, end string) (outcome, error
 		return o, r.probe(ctx, c)
 	}
 	return o, r.recycle(ctx, order)
+}
+
+func better(res Residuals, than float64) bool { return res.Finite && res.Inner < than }
+
+// tryTruncated takes another y when that of the cycle made x worse: where the
+// equations contradict each other the projected problem becomes singular at the
+// floor of the residual, and y without its smallest singular directions is
+// still good. It returns the residuals of the x_try that stands.
+func (r *run) tryTruncated(ctx context.Context, ls *small.Hessenberg, res Residuals) (Residuals, error) {
+	y := truncated(ls)
+	if !allFinite(y) {
+		return res, nil
+	}
+	r.res.Products++
+	d := ls.Recycled()
+	return r.sp.Try(ctx, Correction{Y: y[d:], YU: y[:d]})
+}
+
+// truncation is the relative size of pivots that truncated drops.
+const truncation = 1e-8
+
+func truncated(ls *small.Hessenberg) []float64 {
+	n := ls.Columns()
+	full := make([]float64, n*n)
+	for j := range n {
+		copy(full[j*n:], ls.Triangle().Column(j))
+	}
+	y, _, _ := small.LeastSquaresTo(truncation, full, ls.RightSide(), n, n)
+	return y
 }
 
 // directions selects the recycled space of the next cycle from the sketched
@@ -214,6 +254,12 @@ func (r *run) whyStagnated(ctx context.Context) (string, error) {
 	return stagnationReason(r.residuals, gradient, residual, r.o.Tolerance), nil
 }
 
+// hopeless says whether a cycle without gain has met a floor.
+func (r *run) hopeless(ctx context.Context) (bool, error) {
+	reason, err := r.whyStagnated(ctx)
+	return reason != ReasonStagnated, err
+}
+
 func stagnationReason(res Residuals, gradient, residual, tolerance float64) string {
 	switch {
 	case res.atFloor(tolerance, 100):
@@ -225,8 +271,9 @@ func stagnationReason(res Residuals, gradient, residual, tolerance float64) stri
 }
 
 // contradiction bounds ‖Aᵀ·r‖/(‖A‖_F·‖r‖) below which r counts as orthogonal to
-// the range of A, so that no x can lower it.
-const contradiction = 1e-7
+// the range of A, so that no x can lower it. It must lie below the inverse
+// condition of any system that can be solved at all.
+const contradiction = 1e-12
 
 func (r *run) stopped() bool {
 	if r.reason == "" && r.o.Stop != nil {

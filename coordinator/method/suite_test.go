@@ -5,8 +5,9 @@ import (
 	"math"
 	"testing"
 
+	"rowstead/coordinator/inproc"
 	"rowstead/coordinator/method"
-	"rowstead/coordinator/method/spacetest"
+
 	"rowstead/partition"
 	"rowstead/partition/csr"
 	"rowstead/partition/samples/problems"
@@ -36,43 +37,9 @@ func trials() []trial {
 	}
 }
 
-// blockPreconditioner is M of block Jacobi over the cuts, as workers make it.
-func blockPreconditioner(t testing.TB, a *csr.Matrix, kind string, blocks int) func(dst, src []float64) {
-	t.Helper()
-	cuts, err := partition.CutByEntries(a.Start, blocks)
-	if err != nil {
-		t.Fatal(err)
-	}
-	var parts []precond.Preconditioner
-	var lows []int
-	for p := range cuts.Blocks() {
-		lo, hi := cuts.Range(p)
-		local := &csr.Triplets{}
-		for i := lo; i < hi; i++ {
-			cols, vals := a.Row(i)
-			for k, c := range cols {
-				if int(c) >= lo && int(c) < hi {
-					local.Add(i-lo, int(c)-lo, vals[k])
-				}
-			}
-		}
-		m, _, err := precond.Build(kind, local.Matrix(hi-lo, hi-lo), precond.Options{SubBlocks: 1})
-		if err != nil {
-			t.Fatal(err)
-		}
-		parts, lows = append(parts, m), append(lows, lo)
-	}
-	lows = append(lows, a.Rows)
-	return func(dst, src []float64) {
-		for p, m := range parts {
-			m.Apply(dst[lows[p]:lows[p+1]], src[lows[p]:lows[p+1]])
-		}
-	}
-}
-
 // rowExponents are those that divide every row by the power of two nearest its largest entry.
-func rowExponents(a *csr.Matrix) []int {
-	exponents := make([]int, a.Rows)
+func rowExponents(a *csr.Matrix) []int16 {
+	exponents := make([]int16, a.Rows)
 	for i := range a.Rows {
 		_, vals := a.Row(i)
 		largest := 0.0
@@ -80,42 +47,56 @@ func rowExponents(a *csr.Matrix) []int {
 			largest = max(largest, math.Abs(v))
 		}
 		if largest > 0 {
-			exponents[i] = -int(math.Round(math.Log2(largest)))
+			exponents[i] = -int16(math.Round(math.Log2(largest)))
 		}
 	}
 	return exponents
 }
 
-func scaledBy(a *csr.Matrix, exponents []int) *csr.Matrix {
+func scaledBy(a *csr.Matrix, exponents []int16) *csr.Matrix {
 	d := *a
 	d.Val = append([]float64(nil), a.Val...)
 	for i := range a.Rows {
 		for k := a.Start[i]; k < a.Start[i+1]; k++ {
-			d.Val[k] = math.Ldexp(d.Val[k], exponents[i])
+			d.Val[k] = math.Ldexp(d.Val[k], int(exponents[i]))
 		}
 	}
 	return &d
 }
 
-func solveTrial(t testing.TB, tr trial, blocks int, o method.Options) (method.Result, *spacetest.Simple) {
+// solveTrial solves a trial over row blocks of this process. The table is in
+// the scaled norm: the system is equilibrated beforehand, its right side random.
+func solveTrial(t testing.TB, tr trial, blocks int, o method.Options) method.Result {
 	t.Helper()
 	a := tr.make()
-	a = scaledBy(a, rowExponents(a)) // the table is in the scaled norm
-	sp := spacetest.New(spacetest.Problem{
-		Matrix: a, Right: problems.NormalVector(a.Rows, 5),
-		Apply: blockPreconditioner(t, a, tr.precondition, blocks),
+	a = scaledBy(a, rowExponents(a))
+	cuts, err := partition.CutByEntries(a.Start, blocks)
+	if err != nil {
+		t.Fatal(err)
+	}
+	sp, err := inproc.New(inproc.Problem{
+		Matrix: a, Cuts: cuts, Right: problems.NormalVector(a.Rows, 5), Threads: blocks,
+		Precondition: tr.precondition, Options: precond.Options{SubBlocks: 1},
 	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer sp.Close()
 	res, err := method.Solve(context.Background(), sp, o)
 	if err != nil {
 		t.Fatalf("%s: %v", tr.name, err)
 	}
-	return res, sp
+	check, err := sp.Check(context.Background())
+	if err != nil || check.Met(1e-8) != res.Met {
+		t.Errorf("%s: said met %v, another check %v, %v", tr.name, res.Met, check.Met(1e-8), err)
+	}
+	return res
 }
 
 func TestSuiteProducts(t *testing.T) {
 	for _, tr := range trials() {
 		t.Run(tr.name, func(t *testing.T) {
-			res, _ := solveTrial(t, tr, 4, method.Options{Method: method.Sketched, MaxProducts: 4000})
+			res := solveTrial(t, tr, 4, method.Options{Method: method.Sketched, MaxProducts: 4000})
 			t.Logf("%d products (%d in the guide), %d steps, %d full, %d cycles, met %v %q, true %.1e, hint %.1e", res.Products, tr.products, res.Steps, res.FullSteps, res.Cycles, res.Met, res.Reason, res.Residuals.TrueResidual(), res.ConditionHint)
 			if testing.Verbose() {
 				for _, e := range res.Story {

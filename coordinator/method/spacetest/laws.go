@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"math/rand/v2"
 	"slices"
 	"strings"
 	"testing"
@@ -68,7 +69,7 @@ func equalBits(t *testing.T, got, want []seen) {
 
 // sameBits: ten runs of a scenario give the same bits.
 func (s suite) sameBits(t *testing.T) {
-	for name, c := range s.cases() {
+	for name, c := range s.cases {
 		t.Run(name, func(t *testing.T) {
 			want := watch(t, s.space(t, c), method.Double)
 			for range 9 {
@@ -80,7 +81,7 @@ func (s suite) sameBits(t *testing.T) {
 
 // replayIsDouble: replay form has the bits of double form, to the last.
 func (s suite) replayIsDouble(t *testing.T) {
-	for name, c := range s.cases() {
+	for name, c := range s.cases {
 		t.Run(name, func(t *testing.T) {
 			double := watch(t, s.space(t, c), method.Double)
 			double = slices.DeleteFunc(double, func(a seen) bool {
@@ -108,7 +109,7 @@ func begin(t *testing.T, sp method.Space, form method.BasisForm) (next method.St
 // the bits they would have had.
 func (s suite) tryLeavesAlone(t *testing.T) {
 	ctx := context.Background()
-	for name, c := range s.cases() {
+	for name, c := range s.cases {
 		t.Run(name, func(t *testing.T) {
 			quiet, tried := s.space(t, c), s.space(t, c)
 			step := begin(t, quiet, method.Double)
@@ -138,7 +139,7 @@ func (s suite) tryLeavesAlone(t *testing.T) {
 // keepThenCheck: after Keep, Check has the bits of the Try or Correct before.
 func (s suite) keepThenCheck(t *testing.T) {
 	ctx := context.Background()
-	for name, c := range s.cases() {
+	for name, c := range s.cases {
 		t.Run(name, func(t *testing.T) {
 			sp := s.space(t, c)
 			begin(t, sp, method.Double)
@@ -160,7 +161,7 @@ func (s suite) keepThenCheck(t *testing.T) {
 func (s suite) extremes(t *testing.T) {
 	ctx := context.Background()
 	for _, e := range []int{-996, 996, -1020} {
-		c := s.cases()["grid with bad rows"]
+		c := s.cases["grid with bad rows"]
 		base := s.space(t, c)
 		right := slices.Clone(c.p.Right)
 		for i := range right {
@@ -194,7 +195,7 @@ func (s suite) extremes(t *testing.T) {
 // worstRows: b = A·x but for ten rows; the eight with the largest row-wise errors
 // come first, worst first.
 func (s suite) worstRows(t *testing.T) {
-	c := s.cases()["with a guess, diagonal"]
+	c := s.cases["with a guess, diagonal"]
 	n := c.p.Matrix.Rows
 	right := make([]float64, n)
 	c.p.Matrix.Mul(right, c.p.Guess)
@@ -229,7 +230,7 @@ func (s suite) worstRows(t *testing.T) {
 // notFinite: an x with a NaN or an infinity is told by Finite, and nothing fails.
 func (s suite) notFinite(t *testing.T) {
 	for _, bad := range []float64{math.NaN(), math.Inf(-1)} {
-		c := s.cases()["with a guess, diagonal"]
+		c := s.cases["with a guess, diagonal"]
 		guess := slices.Clone(c.p.Guess)
 		guess[len(guess)/2] = bad
 		c.p.Guess = guess
@@ -245,7 +246,7 @@ func (s suite) notFinite(t *testing.T) {
 // refusals: what cannot be done is an error, not a panic and not a number.
 func (s suite) refusals(t *testing.T) {
 	ctx := context.Background()
-	sp := s.space(t, s.cases()["grid with bad rows"])
+	sp := s.space(t, s.cases["grid with bad rows"])
 	begin(t, sp, method.Replay)
 	if _, err := sp.Try(ctx, method.Correction{Y: []float64{1}}); err == nil {
 		t.Error("Try in replay form: no error")
@@ -261,8 +262,10 @@ type Trace struct{ answers []seen }
 // Record runs a scenario on a grid of at least so many rows.
 func Record(t *testing.T, rows int, form method.BasisForm, make Factory) *Trace {
 	t.Helper()
-	s := suite{make: make, rows: rows}
-	return &Trace{watch(t, s.space(t, s.cases()["grid with bad rows"]), form)}
+	rng := rand.New(rand.NewPCG(7, 11))
+	p := Problem{Matrix: grid(100, rows/100+1, 3, rng)}
+	p.RowExponent, p.Right = rowScale(p.Matrix), normal(p.Matrix.Rows, rng)
+	return &Trace{watch(t, make(t, p, false), form)}
 }
 
 // Difference says where two traces differ in a bit, "" where they do not.

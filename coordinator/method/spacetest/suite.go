@@ -19,9 +19,9 @@ type Factory func(t *testing.T, p Problem, diagonal bool) method.Space
 // Suite runs the laws of method.Space on the spaces that make builds. A case
 // has rows rows at least, so that a caller may reach several strips or blocks.
 func Suite(t *testing.T, rows int, make Factory) {
-	s := suite{make: make, rows: rows}
+	s := suite{make: make, cases: cases(rows)}
 	for _, form := range []method.BasisForm{method.Double, method.Single} {
-		for name, c := range s.cases() {
+		for name, c := range s.cases {
 			t.Run(fmt.Sprintf("%s %s", name, form), func(t *testing.T) { s.agrees(t, c, form) })
 		}
 	}
@@ -36,8 +36,8 @@ func Suite(t *testing.T, rows int, make Factory) {
 }
 
 type suite struct {
-	make Factory
-	rows int
+	make  Factory
+	cases map[string]suiteCase
 }
 
 // suiteCase is a problem and whether it has the diagonal preconditioner.
@@ -47,18 +47,18 @@ type suiteCase struct {
 }
 
 // cases are problems by what is special about them.
-func (s suite) cases() map[string]suiteCase {
+func cases(atLeast int) map[string]suiteCase {
 	rng := rand.New(rand.NewPCG(7, 11))
 	side := 41
-	plain := Problem{Matrix: grid(side, s.rows/side+1, 3, rng)}
+	plain := Problem{Matrix: grid(side, atLeast/side+1, 3, rng)}
 	n := plain.Matrix.Rows
 	plain.RowExponent, plain.Right = rowScale(plain.Matrix), normal(n, rng)
 	guessed := plain
 	guessed.Guess = normal(n, rng)
-	loose := Problem{Matrix: irregular(s.rows+3, true, rng)}
-	loose.RowExponent, loose.Right = rowScale(loose.Matrix), normal(s.rows+3, rng)
-	unscaled := Problem{Matrix: irregular(s.rows+3, false, rng), RowExponent: make([]int16, s.rows+3)}
-	unscaled.Right = normal(s.rows+3, rng)
+	loose := Problem{Matrix: irregular(atLeast+3, true, rng)}
+	loose.RowExponent, loose.Right = rowScale(loose.Matrix), normal(atLeast+3, rng)
+	unscaled := Problem{Matrix: irregular(atLeast+3, false, rng), RowExponent: make([]int16, atLeast+3)}
+	unscaled.Right = normal(atLeast+3, rng)
 	return map[string]suiteCase{
 		"grid with bad rows":          {plain, false},
 		"with a guess, diagonal":      {guessed, true},
