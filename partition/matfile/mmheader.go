@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"fmt"
 	"io"
-	"math"
 	"strings"
 )
 
@@ -132,31 +131,15 @@ func (f *mmFile) sizes(text []byte) error {
 		}
 		n[k] = v
 	}
-	if err := f.checkShape(n[0], n[1]); err != nil {
+	if err := f.head.setShape(n[0], n[1], f.lines); err != nil {
 		return err
 	}
+	f.rows, f.cols = int(n[0]), int(n[1])
 	f.head.Stored = n[2]
 	if f.head.Dense {
 		f.head.Stored = denseCount(f.rows, f.cols, f.head.Symmetry)
 	}
 	return f.checkPromise()
-}
-
-// checkShape refuses rows and columns that no int32 index reaches.
-func (f *mmFile) checkShape(rows, cols int64) error {
-	f.rows, f.cols = int(rows), int(cols)
-	scale := 1
-	if f.head.Complex {
-		scale = 2
-	}
-	if most := int64(math.MaxInt32 / scale); rows < 1 || cols < 1 || rows > most || cols > most {
-		return f.refuse(fmt.Sprintf("between 1 and %d rows and columns", most), fmt.Appendf(nil, "%d by %d", rows, cols))
-	}
-	f.head.Rows, f.head.Cols = f.rows*scale, f.cols*scale
-	if f.head.Symmetry != "general" && rows != cols {
-		return f.refuse("as many rows as columns in a "+f.head.Symmetry+" file", fmt.Appendf(nil, "%d by %d", rows, cols))
-	}
-	return nil
 }
 
 // checkPromise refuses a count that the bytes of a plain file cannot hold.

@@ -3,6 +3,7 @@ package matfile
 import (
 	"fmt"
 	"io"
+	"math"
 
 	"rowstead/partition/csr"
 )
@@ -56,6 +57,11 @@ func ReadDense(path string, o Options) (*Dense, Header, error) {
 	if err != nil {
 		return nil, h, err
 	}
+	if h.Format == "numbers" {
+		if err := tellTable(&h, values); err != nil {
+			return nil, h, err
+		}
+	}
 	d := &Dense{Rows: h.Rows, Cols: h.Cols, Complex: h.Complex, Values: values}
 	if body.order.byRow && h.Cols > 1 {
 		d.Values = byColumn(d)
@@ -77,6 +83,22 @@ func collect(source valueSource) ([]float64, error) {
 		all = append(all, part...)
 	}
 }
+
+// tellTable completes the header of a plain table of numbers. A table of three
+// columns whose first two hold only whole numbers could be triplets: that is
+// refused.
+func tellTable(h *Header, values []float64) error {
+	h.Rows, h.Stored = len(values)/h.Cols, int64(len(values))
+	for k := 0; k < len(values); k += h.Cols {
+		if h.Cols != 3 || !isIndex(values[k]) || !isIndex(values[k+1]) {
+			return nil
+		}
+	}
+	return &FileError{Path: h.Path, Expected: "vectors as a Matrix Market array, or a table of numbers",
+		Found: "three columns that could be rows, columns and values", Flag: "--index-base 1 (or 0) as triplets"}
+}
+
+func isIndex(v float64) bool { return v >= 0 && v == math.Trunc(v) && v <= math.MaxInt32 }
 
 // byColumn reorders values that came row after row.
 func byColumn(d *Dense) []float64 {

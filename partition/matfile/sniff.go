@@ -17,6 +17,19 @@ func openFormat(in *stream, o Options, purpose use) (*Reader, error) {
 	switch {
 	case hasPrefixFold(start, mmBanner):
 		return openMM(in, o, purpose)
+	case bytes.HasPrefix(start, []byte(npyMagic)):
+		return openNpy(in, purpose)
+	case bytes.HasPrefix(start, []byte("PK\x03\x04")), bytes.HasPrefix(start, []byte("PK\x05\x06")):
+		return openNpz(in, purpose)
+	}
+	if start, err = in.in.Peek(min(400, in.in.Size())); err != nil && err != io.EOF {
+		return nil, in.readError(err, 1)
+	}
+	if looksBoeing(start) {
+		return openHB(in, purpose)
+	}
+	if text := bytes.TrimLeft(start, " \t\r\n"); len(text) > 0 && bytes.IndexByte([]byte("%#+-.0123456789"), text[0]) >= 0 {
+		return openText(in, o, purpose)
 	}
 	return nil, &FileError{Path: in.path, Line: 1, Expected: "a file that begins with " + mmBanner + ", or another format this program reads", Found: quote(start)}
 }
