@@ -1,3 +1,5 @@
+//go:build !amd64 || noasm
+
 package sketch
 
 // addGroups adds whole groups of 8 rows; see addGroupsGo.
