@@ -123,9 +123,7 @@ func (f *Space) failure(ctx context.Context, op string, failures []error) error 
 		if err == nil {
 			continue
 		}
-		m := f.members[i]
-		lo, hi := m.Range()
-		named := &MemberError{Member: m.Name(), Op: op, Lo: lo, Hi: hi, Err: err}
+		named := f.memberError(i, op, err)
 		if ctx.Err() == nil && isCanceled(err) {
 			if followed == nil {
 				followed = named
@@ -135,6 +133,11 @@ func (f *Space) failure(ctx context.Context, op string, failures []error) error 
 		return named
 	}
 	return followed
+}
+
+func (f *Space) memberError(i int, op string, err error) error {
+	lo, hi := f.members[i].Range()
+	return &MemberError{Member: f.members[i].Name(), Op: op, Lo: lo, Hi: hi, Err: err}
 }
 
 // do is fanOut for verbs without an answer.

@@ -3,6 +3,7 @@ package fleet
 import (
 	"context"
 	"errors"
+	"fmt"
 	"math"
 	"sort"
 
@@ -59,18 +60,28 @@ type ConjugateSums struct{ RR, RZ float64 }
 
 func isCanceled(err error) bool { return errors.Is(err, context.Canceled) }
 
-// addTo adds v to the sum element by element; a nil sum takes a copy of v.
-func addTo(sum, v []float64) []float64 {
-	if sum == nil && len(v) > 0 {
-		return append(make([]float64, 0, len(v)), v...)
+// sums is a total and the part of one member.
+type sums struct {
+	total *[]float64
+	part  []float64
+}
+
+// add adds the parts of member i to their totals; member 0 sets them, in the room
+// they have. A part of another length than member 0's is an error.
+func (f *Space) add(op string, i int, all ...sums) error {
+	for _, s := range all {
+		if i == 0 {
+			*s.total = append((*s.total)[:0], s.part...)
+			continue
+		}
+		if len(s.part) != len(*s.total) {
+			return f.memberError(i, op, fmt.Errorf("%d sums came, %d from %s", len(s.part), len(*s.total), f.members[0].Name()))
+		}
+		for k, v := range s.part {
+			(*s.total)[k] += v
+		}
 	}
-	if len(sum) != len(v) {
-		panic("fleet: partial sums of different lengths")
-	}
-	for i, vi := range v {
-		sum[i] += vi
-	}
-	return sum
+	return nil
 }
 
 func addSquares(sum *Squares, v Squares) {

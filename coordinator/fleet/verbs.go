@@ -40,22 +40,13 @@ func (f *Space) Advance(ctx context.Context, s method.Step) (method.Stepped, err
 	out := &f.stepped
 	out.WW = 0
 	for i, p := range parts {
-		into(&out.Gram, p.Gram, i)
-		into(&out.Dots, p.Dots, i)
-		into(&out.SketchW, p.SketchW, i)
-		into(&out.HoldW, p.HoldW, i)
 		out.WW += p.WW
+		if err := f.add("advance", i, sums{&out.Gram, p.Gram}, sums{&out.Dots, p.Dots},
+			sums{&out.SketchW, p.SketchW}, sums{&out.HoldW, p.HoldW}); err != nil {
+			return method.Stepped{}, err
+		}
 	}
 	return *out, nil
-}
-
-// into adds the part of block i to sum; block 0 sets it, in the room sum has.
-func into(sum *[]float64, part []float64, i int) {
-	if i == 0 {
-		*sum = append((*sum)[:0], part...)
-		return
-	}
-	addTo(*sum, part)
 }
 
 // Sketches implements method.Space.
@@ -67,8 +58,9 @@ func (f *Space) Sketches(ctx context.Context, from, to int) (sb, hold []float64,
 		return nil, nil, err
 	}
 	for i, p := range parts {
-		into(&f.sb, p.Sketch, i)
-		into(&f.sh, p.Hold, i)
+		if err := f.add("sketches", i, sums{&f.sb, p.Sketch}, sums{&f.sh, p.Hold}); err != nil {
+			return nil, nil, err
+		}
 	}
 	return f.sb, f.sh, nil
 }
@@ -81,9 +73,11 @@ func (f *Space) Reduce(ctx context.Context, h []float64) (dots []float64, ww flo
 	if err != nil {
 		return nil, 0, err
 	}
-	for _, p := range parts {
-		dots = addTo(dots, p.Dots)
+	for i, p := range parts {
 		ww += p.WW
+		if err := f.add("reduce", i, sums{&dots, p.Dots}); err != nil {
+			return nil, 0, err
+		}
 	}
 	return dots, ww, nil
 }
@@ -117,10 +111,10 @@ func (f *Space) Recycle(ctx context.Context, next method.Cycle) (method.Recycled
 		return method.Recycled{}, err
 	}
 	var out method.Recycled
-	for _, p := range parts {
-		out.SU = addTo(out.SU, p.SU)
-		out.SAZ = addTo(out.SAZ, p.SAZ)
-		out.HoldAZ = addTo(out.HoldAZ, p.HoldAZ)
+	for i, p := range parts {
+		if err := f.add("recycle", i, sums{&out.SU, p.SU}, sums{&out.SAZ, p.SAZ}, sums{&out.HoldAZ, p.HoldAZ}); err != nil {
+			return method.Recycled{}, err
+		}
 	}
 	return out, nil
 }

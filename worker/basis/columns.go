@@ -109,3 +109,6 @@ func (b *columns[F]) Reduce(out, w, h []float64, r kernel.Range) {
 func (b *columns[F]) Combine(dst [][]float64, t []float64, ldt, k int, r kernel.Range) {
 	kernel.Combine(dst, b.cols[:k], t, ldt, r)
 }
+
+// Truncate drops the vectors from j on.
+func (b *columns[F]) Truncate(j int) { b.cols = b.cols[:j] }
