@@ -11,7 +11,9 @@ import (
 // suspectGrowth it is unstable if M⁻¹ is also a worse guess than nothing
 // (misfit above 1); an ill-conditioned block whose factor is nearly exact is
 // kept. The test is that of Chow and Saad, Experimental study of ILU
-// preconditioners for indefinite matrices.
+// preconditioners for indefinite matrices. The bound is measured: GMRES without
+// restart on skew and indefinite stencils of 20² to 40² points took fewer steps
+// with ilu0 than with the diagonal up to a growth of 1e9, from 5e9 on as many.
 const (
 	suspectGrowth = 1e10
 	certainGrowth = 1e15
@@ -39,7 +41,8 @@ func assemble(a *csr.Matrix, o Options, r *Report, factor func(*csr.Matrix, Opti
 func assembleIn[F float32 | float64](a *csr.Matrix, o Options, r *Report, factor func(*csr.Matrix, Options) ldu) (Preconditioner, string) {
 	cuts := blockCuts(a.Rows, o)
 	r.Blocks = len(cuts) - 1
-	groups := partCuts(r.Blocks, o.Interleave)
+	groups := partCuts(r.Blocks, o)
+	long := longRows(a, o, r.Kind)
 	f := &factored[F]{rows: a.Rows, parts: make([]part[F], len(groups)-1)}
 	trials := make([]trial, len(f.parts))
 	o.Each(len(f.parts), func(p int) {
@@ -51,6 +54,7 @@ func assembleIn[F float32 | float64](a *csr.Matrix, o Options, r *Report, factor
 			factors[b] = factor(blocks[b], o)
 		}
 		f.parts[p] = pack[F](own[0], factors)
+		f.parts[p].long = long
 		trials[p] = f.parts[p].try(own, blocks, factors)
 	})
 	r.PositiveDefinite = o.Symmetric
@@ -69,6 +73,20 @@ func assembleIn[F float32 | float64](a *csr.Matrix, o Options, r *Report, factor
 		r.Reason = fmt.Sprintf("the diagonal was raised by %.2g of itself to keep the pivots positive", r.Shift)
 	}
 	return f, verdict(r, broken)
+}
+
+// longRow is the number of entries from which summing a row in two strands is
+// the quicker (measured 4.1 against 4.9 products at 20 entries, 1.4 against 1.0
+// at 3).
+const longRow = 8
+
+// longRows says whether rows of L and U are expected to be long. It decides about
+// bits, so it rests on the whole row block, not on parts.
+func longRows(a *csr.Matrix, o Options, kind string) bool {
+	if kind == ILUT {
+		return o.Fill >= longRow
+	}
+	return localEntries(a) >= a.Rows*(2*longRow+1)
 }
 
 // verdict says in plain words why a factor is unstable, or nothing.

@@ -47,7 +47,14 @@ func blockCuts(rows int, o Options) []int {
 }
 
 // partCuts groups the sub-blocks: part p has the sub-blocks [q[p], q[p+1]).
-func partCuts(blocks, width int) []int {
+func partCuts(blocks int, o Options) []int {
+	width := o.Interleave
+	switch {
+	case width == 0 && o.Threads == 0:
+		width = 2
+	case width == 0:
+		width = max(1, min(blocks/o.Threads, 4))
+	}
 	var q []int
 	for b := 0; b < blocks; b += width {
 		q = append(q, b)

@@ -57,7 +57,7 @@ func newRowwise(rows int, inverse []float64, o Options, r *Report) *rowwise {
 	blocks := blockCuts(rows, o)
 	r.Blocks = len(blocks) - 1
 	p := &rowwise{rows: rows, inverse: inverse}
-	for _, b := range partCuts(r.Blocks, o.Interleave) {
+	for _, b := range partCuts(r.Blocks, o) {
 		p.cuts = append(p.cuts, blocks[b])
 	}
 	return p

@@ -32,10 +32,11 @@ type triangle[F float32 | float64] struct {
 // part is a run of neighbouring sub-blocks that one thread solves row by row in
 // turn: their rows i, i = 0, 1, …, one sub-block after the other.
 type part[F float32 | float64] struct {
-	lo, hi       int // its rows in the row block
+	lo, hi       int  // its rows in the row block
+	long         bool // rows are long: sum them in two strands
 	order        []int32
 	lower, upper triangle[F] // upper in the reverse of order
-	inverse      []float64
+	inverse      []float64   // D⁻¹, in the reverse of order too
 }
 
 // factored applies z = (I + U)⁻¹·D⁻¹·(I + L)⁻¹·r part by part.
@@ -81,77 +82,6 @@ func (f *factored[F]) Bytes() int64 {
 	return n
 }
 
-// solve forms the part's rows of z = (I + U)⁻¹·D⁻¹·(I + L)⁻¹·r.
-func (p *part[F]) solve(z, r []float64) {
-	z, r = z[p.lo:p.hi], r[p.lo:p.hi]
-	forward(&p.lower, p.order, z, r)
-	backward(&p.upper, p.order, z, p.inverse)
-}
-
-// forward solves (I + L)·z = r. Every product is rounded before it is
-// subtracted, on every processor type. 2 flops an entry.
-func forward[F float32 | float64](l *triangle[F], order []int32, z, r []float64) {
-	end, col, val := l.end, l.col, l.val
-	end = end[:len(order)]
-	k := 0
-	for t, row := range order {
-		e := end[t]
-		cc, vv := col[k:e], val[k:e]
-		vv = vv[:len(cc)]
-		sum := r[row]
-		for j, c := range cc {
-			sum -= float64(float64(vv[j]) * z[c])
-		}
-		z[row], k = sum, e
-	}
-}
-
-// backward solves (I + U)·z = D⁻¹·z in place, in the reverse of order.
-func backward[F float32 | float64](u *triangle[F], order []int32, z, inverse []float64) {
-	end, col, val := u.end, u.col, u.val
-	inverse = inverse[:len(z)]
-	k, t := 0, len(order)
-	for _, e := range end {
-		t--
-		row := order[t]
-		cc, vv := col[k:e], val[k:e]
-		vv = vv[:len(cc)]
-		sum := z[row] * inverse[row]
-		for j, c := range cc {
-			sum -= float64(float64(vv[j]) * z[c])
-		}
-		z[row], k = sum, e
-	}
-}
-
-// solveTransposed forms the part's rows of z = (I + L)⁻ᵀ·D⁻¹·(I + U)⁻ᵀ·r: the
-// rows in the opposite order, each final value taken out of the rows to come.
-func (p *part[F]) solveTransposed(z, r []float64) {
-	z, r = z[p.lo:p.hi], r[p.lo:p.hi]
-	copy(z, r)
-	n := len(p.order)
-	for t, row := range p.order {
-		spread(&p.upper, n-1-t, z, z[row])
-	}
-	for i, v := range p.inverse {
-		z[i] *= v
-	}
-	for t := n - 1; t >= 0; t-- {
-		spread(&p.lower, t, z, z[p.order[t]])
-	}
-}
-
-// spread subtracts v times row t of the triangle from z.
-func spread[F float32 | float64](m *triangle[F], t int, z []float64, v float64) {
-	from := 0
-	if t > 0 {
-		from = m.end[t-1]
-	}
-	for k := from; k < m.end[t]; k++ {
-		z[m.col[k]] -= float64(float64(m.val[k]) * v)
-	}
-}
-
 // pack lays the factors of neighbouring sub-blocks out as one part; lo is its
 // first row. The factors are not kept.
 func pack[F float32 | float64](lo int, blocks []ldu) part[F] {
@@ -163,9 +93,9 @@ func pack[F float32 | float64](lo int, blocks []ldu) part[F] {
 		p.hi += len(f.inverse)
 		longest = max(longest, len(f.inverse))
 		lower, upper = lower+f.lower.Entries(), upper+f.upper.Entries()
-		p.inverse = append(p.inverse, f.inverse...)
 	}
 	p.order = make([]int32, 0, p.hi-lo)
+	p.inverse = make([]float64, 0, p.hi-lo)
 	p.lower = newTriangle[F](p.hi-lo, lower)
 	p.upper = newTriangle[F](p.hi-lo, upper)
 	for i := range longest {
@@ -180,6 +110,7 @@ func pack[F float32 | float64](lo int, blocks []ldu) part[F] {
 		for b := len(blocks) - 1; b >= 0; b-- {
 			if i < len(blocks[b].inverse) {
 				p.upper.take(blocks[b].upper, i, offset[b], true)
+				p.inverse = append(p.inverse, blocks[b].inverse[i])
 			}
 		}
 	}

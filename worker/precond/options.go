@@ -23,7 +23,8 @@ func (o Options) complete() (Options, error) {
 	}
 	atLeast("the fill", &o.Fill, 20)
 	atLeast("the number of sub-blocks", &o.SubBlocks, 0)
-	atLeast("the number of interleaved sub-blocks", &o.Interleave, 2)
+	atLeast("the number of interleaved sub-blocks", &o.Interleave, 0)
+	atLeast("the number of threads", &o.Threads, 0)
 	atLeast("the number of unknowns a node", &o.Node, 1)
 	if len(faults) > 0 {
 		return o, fmt.Errorf("precondition: %s", strings.Join(faults, ", "))

@@ -59,8 +59,11 @@ type Options struct {
 	Fill int
 	// SubBlocks is the number of row sub-blocks. 0: chosen from the rows alone.
 	SubBlocks int
-	// Interleave is the number of sub-blocks of a part. 0: 2.
-	Interleave int
+	// Interleave is the number of sub-blocks of a part, Threads the number of
+	// threads that will share the parts. Neither changes a bit. Interleave 0: 2, or
+	// up to 4 as long as Threads, if given, leaves every thread a part: 4 is the
+	// quickest for one thread, 8 is slower again.
+	Interleave, Threads int
 	// Node is the number of unknowns interleaved at a node, which a sub-block
 	// never splits. 0: 1.
 	Node int
@@ -78,10 +81,10 @@ type Options struct {
 
 // Report says what was built, and why if it is not what was asked for.
 type Report struct {
-	Asked   string // the kind asked for
-	Kind    string // what it became
-	Entries int    // stored numbers of the preconditioner, diagonal included
-	Fill    float64
+	Asked   string  // the kind asked for
+	Kind    string  // what it became
+	Entries int     // stored numbers of the preconditioner, diagonal included
+	Fill    float64 // Entries in units of the local entries of A
 	// Pivots are the first few rows whose pivot was too small and was replaced;
 	// PivotCount is how many there are.
 	Pivots     []int
@@ -116,11 +119,11 @@ type step struct {
 // ladder lists the kinds from the strongest to the one that always works; when
 // a kind is of no use, the next one is tried.
 func ladder() []step {
-	return []step{{ILU0, makeILU0}, {Diagonal, makeDiagonal}, {None, makeNone}}
+	return []step{{ILUT, makeILUT}, {ILU0, makeILU0}, {Diagonal, makeDiagonal}, {None, makeNone}}
 }
 
 // Kinds lists the kinds that Build knows, weakest first.
-func Kinds() []string { return []string{None, Diagonal, ILU0} }
+func Kinds() []string { return []string{None, Diagonal, ILU0, ILUT} }
 
 // Build makes the preconditioner of a row block. a has the block's rows; its
 // first a.Rows columns are the rows' own and any further ones are halo columns,

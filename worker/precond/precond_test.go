@@ -72,7 +72,8 @@ func TestPartsGiveTheSameBits(t *testing.T) {
 		r := vector(a.Rows, 3)
 		want := solved(p, r)
 
-		o.Interleave = rapid.IntRange(1, 5).Draw(t, "other interleave")
+		o.Interleave = rapid.IntRange(0, 5).Draw(t, "other interleave")
+		o.Threads = rapid.IntRange(0, 9).Draw(t, "threads")
 		o.Each = func(count int, do func(int)) {
 			var all sync.WaitGroup
 			for i := range count {
@@ -214,6 +215,16 @@ func TestBlockCuts(t *testing.T) {
 			}
 		}
 	})
+}
+
+func TestPartsLeaveEveryThreadOne(t *testing.T) {
+	for _, c := range []struct{ blocks, interleave, threads, parts int }{
+		{8, 0, 0, 4}, {8, 0, 1, 2}, {8, 0, 2, 2}, {8, 0, 3, 4}, {8, 0, 4, 4}, {8, 0, 16, 8}, {8, 3, 1, 3}, {1, 0, 4, 1}, {16, 0, 2, 4},
+	} {
+		if got := len(partCuts(c.blocks, Options{Interleave: c.interleave, Threads: c.threads})) - 1; got != c.parts {
+			t.Errorf("%+v: %d parts", c, got)
+		}
+	}
 }
 
 func TestSubBlocksFollowFromRows(t *testing.T) {
