@@ -58,7 +58,7 @@ func (s size) parts(f form) []part {
 	if s.method == method.CG {
 		return list
 	}
-	k := float64(f.cycle) + 1
+	k := min(float64(f.cycle), s.rows) + 1
 	basis := vector * k
 	switch f.basis {
 	case method.Single:

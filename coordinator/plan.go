@@ -97,7 +97,7 @@ func (r *runner) choosePreconditioner(p *plan, d order.Diagonal) {
 	gaps := d.Missing.Count + d.Zero.Count
 	if float64(gaps) > weak*float64(r.sys.matrix.Rows) {
 		p.precondition = "none"
-		r.why["precondition"] = fmt.Sprintf("%d rows have nothing on the diagonal to divide by", gaps)
+		r.why["precondition"] = fmt.Sprintf("%d of %d rows have nothing on the diagonal to divide by", gaps, r.sys.matrix.Rows)
 		return
 	}
 	p.precondition = "ilu0"

@@ -74,10 +74,10 @@ func (r *runner) read(ctx context.Context) error {
 	r.rim.Phase(report.Placing)
 	return r.timed(&r.rec.Seconds.Read, func() error {
 		head, err := look(r.job)
+		r.rec.Rows, r.rec.Columns, r.rec.Entries = head.Rows, head.Cols, int(head.Stored)
 		if err != nil {
 			return err
 		}
-		r.rec.Rows, r.rec.Columns, r.rec.Entries = head.Rows, head.Cols, int(head.Stored)
 		if err := r.budget(head); err != nil {
 			return err
 		}

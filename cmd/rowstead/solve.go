@@ -1,10 +1,6 @@
 package main
 
-import (
-	"sort"
-
-	"github.com/spf13/cobra"
-)
+import "github.com/spf13/cobra"
 
 func (a *app) solveCommand() *cobra.Command {
 	var s solveFlags
@@ -37,10 +33,4 @@ func (a *app) solveCommand() *cobra.Command {
 	s.add(c.Flags())
 	a.jsonAndQuiet(c)
 	return c
-}
-
-// sorted puts errors into the order of their texts.
-func sorted(faults []error) []error {
-	sort.Slice(faults, func(i, k int) bool { return faults[i].Error() < faults[k].Error() })
-	return faults
 }

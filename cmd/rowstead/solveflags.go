@@ -1,9 +1,10 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 	"os"
+	"sort"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -99,10 +100,10 @@ func (a *app) jsonAndQuiet(c *cobra.Command) {
 // check reports every fault of the values at once.
 func (s *solveFlags) check(f *pflag.FlagSet) error {
 	j := &s.job
-	var faults []error
+	var faults []string
 	fault := func(bad bool, format string, values ...any) {
 		if bad {
-			faults = append(faults, fmt.Errorf(format, values...))
+			faults = append(faults, fmt.Sprintf(format, values...))
 		}
 	}
 	fault(!(j.Tolerance > 0 && j.Tolerance < 1), "--tolerance %v: expected a number between 0 and 1", j.Tolerance)
@@ -127,7 +128,8 @@ func (s *solveFlags) check(f *pflag.FlagSet) error {
 	if len(faults) == 0 {
 		return nil
 	}
-	return &failure{statusInput, errors.Join(sorted(faults)...)}
+	sort.Strings(faults)
+	return usage("%s", strings.Join(faults, "; "))
 }
 
 func among(value string, allowed ...string) bool {
@@ -139,8 +141,7 @@ func among(value string, allowed ...string) bool {
 	return false
 }
 
-// given are the flags that were set, as texts, with paths made absolute so that
-// a run can be carried on from another folder.
+// given are the flags that were set, as texts, as a record keeps them.
 func given(f *pflag.FlagSet) map[string]string {
 	asked := map[string]string{}
 	f.Visit(func(flag *pflag.Flag) {
