@@ -13,12 +13,9 @@ func (p *ritz) filtered(g Triangle, want int) ([]float64, int) {
 		return nil, 0
 	}
 	gp, xp := make([]float64, p.m*n), make([]float64, p.m*n)
-	unit := make([]float64, p.m)
 	for c, j := range kept {
 		copy(gp[c*p.m:], g.Column(j))
-		unit[j] = 1
-		p.multiply(xp[c*p.m:(c+1)*p.m], unit)
-		unit[j] = 0
+		p.column(xp[c*p.m:(c+1)*p.m], j)
 	}
 	factor := NewQR(p.m, n)
 	factor.Append(gp)
@@ -42,6 +39,19 @@ func (p *ritz) filtered(g Triangle, want int) ([]float64, int) {
 	return t, len(mu)
 }
 
+// column sets out to column j of (Ω·X)[:m].
+func (p *ritz) column(out []float64, j int) {
+	r := p.scratch
+	clear(r)
+	if j < p.d {
+		copy(r, p.recycled(j))
+	} else {
+		copy(r, p.q.R().Column(j))
+	}
+	p.h.turn(r)
+	copy(out, r)
+}
+
 // denseOperator is z ↦ N·R⁻¹·z, N the leading rows of x.
 func denseOperator(x []float64, rows int, r Triangle) func(dst, src []float64) {
 	n := r.Size()
@@ -56,17 +66,17 @@ func denseOperator(x []float64, rows int, r Triangle) func(dst, src []float64) {
 	}
 }
 
-// independent lists the columns that a pivoted QR keeps, ascending.
+// independent lists the columns that a pivoted QR of S·W keeps, ascending.
 func (p *ritz) independent() []int {
-	s, reach := p.q.Rows(), p.m
-	if p.d > 0 {
-		reach = s // the part of S·U outside Q counts
-	}
+	outside := p.outside()
+	inside := p.q.Columns()
+	reach := inside + len(outside)/max(1, p.d)
 	w := make([]float64, reach*p.m)
 	for j := range p.m {
 		c := w[j*reach : (j+1)*reach]
 		if j < p.d {
-			copy(c, p.recycled(j))
+			copy(c, p.recycled(j)[:inside])
+			copy(c[inside:], outside[j*(reach-inside):(j+1)*(reach-inside)])
 		} else {
 			copy(c, p.q.R().Column(j))
 		}
@@ -78,4 +88,28 @@ func (p *ritz) independent() []int {
 	kept := slices.Clone(f.order[:f.rank])
 	slices.Sort(kept)
 	return kept
+}
+
+// outside is the part of S·U outside span Q up to a rotation from the left:
+// at most d rows, d columns.
+func (p *ritz) outside() []float64 {
+	inside, s := p.q.Columns(), p.q.Rows()
+	rows := s - inside
+	if p.d == 0 || rows == 0 {
+		return nil
+	}
+	part := make([]float64, 0, rows*p.d)
+	for j := range p.d {
+		part = append(part, p.recycled(j)[inside:]...)
+	}
+	if rows <= p.d {
+		return part
+	}
+	q := NewQR(rows, p.d)
+	q.Append(part)
+	square := make([]float64, p.d*p.d)
+	for j := range p.d {
+		copy(square[j*p.d:], q.R().Column(j))
+	}
+	return square
 }

@@ -192,7 +192,7 @@ func applyReflector(tau float64, v, c []float64) {
 	if tau == 0 {
 		return
 	}
-	w := tau * (c[0] + dot(v, c[1:]))
+	w := float64(tau * (c[0] + dot(v, c[1:])))
 	c[0] -= w
 	subtract(c[1:], v, w)
 }

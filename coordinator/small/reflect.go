@@ -54,7 +54,7 @@ func (q *QR) reflect(strip []float64, pivot, c int) (tau float64) {
 			w[k] = 0
 			continue
 		}
-		w[k] = tau * (head[k] + float64(scale*w[k]))
+		w[k] = float64(tau * (head[k] + float64(scale*w[k])))
 		head[k] -= w[k]
 	}
 	head[c] = beta

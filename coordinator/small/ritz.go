@@ -133,7 +133,8 @@ func (p *ritz) trusted(t, mu []float64) bool {
 	for i, size := range mu {
 		squares := 0.0
 		for j, a := range t[i*p.m : (i+1)*p.m] {
-			squares += (a * p.norms[j]) * (a * p.norms[j])
+			part := a * p.norms[j]
+			squares += float64(part * part)
 		}
 		if !isFinite(squares) || !isFinite(size) || size < filterTol*math.Sqrt(squares) {
 			return false

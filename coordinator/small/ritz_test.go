@@ -272,14 +272,18 @@ func checkRitz(t *testing.T, c *cycleData, want int) {
 
 func BenchmarkHarmonicRitz(b *testing.B) {
 	for _, c := range []struct{ m, d int }{{116, 16}, {332, 16}, {516, 16}, {1000, 16}} {
-		for _, kind := range []string{"real", "complex"} {
+		for _, kind := range []string{"real", "complex", "degenerate"} {
 			b.Run(fmt.Sprintf("m%d/d%d/%s", c.m, c.d, kind), func(b *testing.B) {
 				n := 2 * c.m
 				o := operatorOf{realSpectrum(n, 20, 4), 0}
 				if kind == "complex" {
 					o.eigen = complexSpectrum(n, 20)
 				}
-				data := runCycle(o, tall(91, n, c.d), c.d, c.m-c.d, 4)
+				window := c.m
+				if kind == "degenerate" {
+					window = 4
+				}
+				data := runCycle(o, tall(91, n, c.d), c.d, c.m-c.d, window)
 				for b.Loop() {
 					HarmonicRitz(data.q, data.h, data.su, c.d)
 				}

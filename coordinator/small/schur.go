@@ -60,7 +60,7 @@ func (f *schur) magnitude(i int) float64 {
 		return math.Abs(a)
 	}
 	b, c, d := f.t[i*f.n+i+1], f.t[(i+1)*f.n+i], f.t[(i+1)*f.n+i+1]
-	return math.Sqrt(math.Abs(a*d - b*c))
+	return math.Sqrt(math.Abs(float64(a*d) - float64(b*c)))
 }
 
 // sort brings the blocks in falling order of magnitude by selection. A swap that
