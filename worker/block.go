@@ -14,9 +14,9 @@
 //
 // Verbs are called one at a time, those of neighbouring blocks at the same time
 // and in the same order. Slices in an answer stay valid until the next verb. A
-// verb returns an error when it is not allowed as things stand, or when the
-// exchange fails; after the latter the blocks have come apart and only Solution,
-// Memory and Close make sense. A Block starts the goroutines of its team; Close
+// verb returns a Refusal when it is not allowed as things stand, or another error
+// when the exchange fails; after the latter the blocks have come apart and only
+// Solution, Memory and Close make sense. A Block starts the goroutines of its team; Close
 // ends them.
 package worker
 
@@ -215,15 +215,26 @@ func (b *Block) SetGuess(x []float64) {
 	}
 }
 
+// Refusal is the error of a verb that is not allowed as things stand. Nothing has
+// been done and no halo exchanged: the block can go on.
+type Refusal struct{ Text string }
+
+// Error says what was refused.
+func (r *Refusal) Error() string { return "worker: " + r.Text }
+
+func refuse(format string, args ...any) error {
+	return &Refusal{fmt.Sprintf(format, args...)}
+}
+
 // ready returns an error unless the block is prepared for that kind of verb.
 func (b *Block) ready(conjugate bool) error {
 	switch {
 	case b.factors == nil:
-		return fmt.Errorf("worker: the block is not prepared")
+		return refuse("the block is not prepared")
 	case conjugate && !b.conjugate:
-		return fmt.Errorf("worker: the block is not prepared for conjugate gradients")
+		return refuse("the block is not prepared for conjugate gradients")
 	case !conjugate && b.conjugate:
-		return fmt.Errorf("worker: the block is prepared for conjugate gradients")
+		return refuse("the block is prepared for conjugate gradients")
 	}
 	return nil
 }

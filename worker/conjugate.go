@@ -2,7 +2,6 @@ package worker
 
 import (
 	"context"
-	"fmt"
 
 	"rowstead/worker/kernel"
 )
@@ -30,7 +29,7 @@ func (b *Block) mayMove() error {
 		return err
 	}
 	if !b.started {
-		return fmt.Errorf("worker: conjugate gradients are not started")
+		return refuse("conjugate gradients are not started")
 	}
 	return nil
 }

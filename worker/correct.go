@@ -53,11 +53,11 @@ func (b *Block) mayCorrect(c Correction) error {
 	rows := len(c.YU) + len(c.Y)
 	switch {
 	case !b.started && len(c.Y) > 0, b.started && len(c.Y) > b.basis.Len():
-		return fmt.Errorf("worker: %d coefficients do not fit the basis", len(c.Y))
+		return refuse("%d coefficients do not fit the basis", len(c.Y))
 	case len(c.YU) != 0 && len(c.YU) != b.space.directions:
-		return fmt.Errorf("worker: %d coefficients for a recycled space of %d", len(c.YU), b.space.directions)
+		return refuse("%d coefficients for a recycled space of %d", len(c.YU), b.space.directions)
 	case c.Directions < 0 || len(c.T) != rows*c.Directions:
-		return fmt.Errorf("worker: T has %d entries, expected %d×%d", len(c.T), rows, c.Directions)
+		return refuse("T has %d entries, expected %d×%d", len(c.T), rows, c.Directions)
 	}
 	return nil
 }
@@ -157,7 +157,7 @@ func (b *Block) tryUpdate(ctx context.Context, c Correction) (ResidualSums, erro
 // Keep sets x ← x_try of the last Try or Correct.
 func (b *Block) Keep(context.Context) error {
 	if !b.tried {
-		return fmt.Errorf("worker: nothing tried to keep")
+		return refuse("nothing tried to keep")
 	}
 	b.x, b.try = b.try, b.x
 	b.tried = false

@@ -2,7 +2,6 @@ package worker
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"math"
 
@@ -13,7 +12,7 @@ import (
 
 // ErrReplay is wrapped by the errors of verbs that need vectors which replay form
 // no longer has.
-var ErrReplay = errors.New("worker: the basis is kept as replay")
+var ErrReplay = refuse("the basis is kept as replay")
 
 // Start recomputes r = b − A·x, empties the basis and sets w ← D·r.
 func (b *Block) Start(ctx context.Context, c Cycle) (ResidualSums, error) {
@@ -43,7 +42,7 @@ func (b *Block) makeRoom(c Cycle) error {
 		b.basis = nil
 		form, err := basis.New(c.Form)
 		if err != nil {
-			return err
+			return refuse("%v", err)
 		}
 		b.basis = form
 	}
@@ -78,7 +77,7 @@ func (c Cycle) check() error {
 	sketches := c.SketchRows == 0 || (c.SketchRows > 0 && c.SketchRows <= mostSketchRows &&
 		c.Zeta >= 1 && c.Zeta <= 64 && c.SketchRows%(sketch.Lanes*c.Zeta) == 0)
 	if c.Capacity < 1 || c.Window < 1 || !sketches {
-		return fmt.Errorf("worker: a cycle of %d vectors, window %d, %d sketch rows with %d nonzeros", c.Capacity, c.Window, c.SketchRows, c.Zeta)
+		return refuse("a cycle of %d vectors, window %d, %d sketch rows with %d nonzeros", c.Capacity, c.Window, c.SketchRows, c.Zeta)
 	}
 	return nil
 }
@@ -151,13 +150,13 @@ func (b *Block) mayAdvance(s Step) error {
 		return err
 	}
 	if !b.started {
-		return fmt.Errorf("worker: no cycle is started")
+		return refuse("no cycle is started")
 	}
 	if err := b.basis.Check(basis.Step{Lo: s.Lo, H: s.H, Norm: s.Norm}, b.cycle.Window); err != nil {
-		return err
+		return refuse("%v", err)
 	}
 	if s.Dots < 0 {
-		return fmt.Errorf("worker: %d dots", s.Dots)
+		return refuse("%d dots", s.Dots)
 	}
 	if ring, ok := b.basis.(*basis.Ring); ok && min(s.Dots, ring.Len()+1) > ring.Most() {
 		return fmt.Errorf("%w: dots with %d vectors", ErrReplay, s.Dots)
@@ -264,7 +263,7 @@ func (b *Block) product(z []float64, dots int, sketched bool) {
 // Sketches returns the block's part of S·b_i and S'·b_i, i in [from, to).
 func (b *Block) Sketches(_ context.Context, from, to int) (SketchSums, error) {
 	if !b.started || b.cycle.SketchRows == 0 || from < 0 || to < from || to > b.basis.Len() {
-		return SketchSums{}, fmt.Errorf("worker: no sketches of vectors [%d, %d)", from, to)
+		return SketchSums{}, refuse("no sketches of vectors [%d, %d)", from, to)
 	}
 	out := &b.sketchOut
 	out.Sketch, out.Hold = out.Sketch[:0], out.Hold[:0]
@@ -283,7 +282,7 @@ func (b *Block) Reduce(_ context.Context, h []float64) (DotSums, error) {
 	}
 	switch {
 	case !b.started || len(h) != b.basis.Len():
-		return DotSums{}, fmt.Errorf("worker: %d coefficients do not fit the basis", len(h))
+		return DotSums{}, refuse("%d coefficients do not fit the basis", len(h))
 	case b.cycle.Form == basis.Replay:
 		return DotSums{}, fmt.Errorf("%w: no Reduce", ErrReplay)
 	}

@@ -11,6 +11,7 @@ package fleet
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"sync"
 
@@ -62,10 +63,20 @@ func (e *MemberError) Error() string {
 // Unwrap returns the member's own error.
 func (e *MemberError) Unwrap() error { return e.Err }
 
+// ErrRefused is wrapped by the error of a member that did not begin a verb because
+// it is not allowed as things stand.
+var ErrRefused = errors.New("refused")
+
+// ErrApart is wrapped by the errors of all verbs after one has failed halfway: the
+// halos of the members are of different verbs then, and what they computed with
+// them would be wrong without a sign.
+var ErrApart = errors.New("the row blocks have come apart")
+
 // Space is a method.Space and a method.ConjugateSpace over members.
 type Space struct {
 	members []Member
 	rows    int
+	apart   error // the failure after which no verb is sent; nil: none
 	stepped method.Stepped
 	sb, sh  []float64 // what Sketches last returned
 }
@@ -95,6 +106,9 @@ func (f *Space) Rows() int { return f.rows }
 // others. The error is that of the first member in block order that did not
 // merely see the cancellation.
 func fanOut[T any](ctx context.Context, f *Space, op string, call func(context.Context, Member) (T, error)) ([]T, error) {
+	if f.apart != nil {
+		return nil, fmt.Errorf("%s: %w: %w", op, ErrApart, f.apart)
+	}
 	answers := make([]T, len(f.members))
 	failures := make([]error, len(f.members))
 	if len(f.members) == 1 {
@@ -117,7 +131,22 @@ func fanOut[T any](ctx context.Context, f *Space, op string, call func(context.C
 
 // failure picks the error that caused the others. When the caller's ctx ended,
 // every member only follows it and the first in order stands for all.
+// Unless every member refused the verb, they have come apart.
 func (f *Space) failure(ctx context.Context, op string, failures []error) error {
+	err := f.cause(ctx, op, failures)
+	if err == nil {
+		return nil
+	}
+	for _, e := range failures {
+		if !errors.Is(e, ErrRefused) {
+			f.apart = err
+		}
+	}
+	return err
+}
+
+// cause is the error that stands for all.
+func (f *Space) cause(ctx context.Context, op string, failures []error) error {
 	var followed error
 	for i, err := range failures {
 		if err == nil {

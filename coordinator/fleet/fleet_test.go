@@ -3,6 +3,7 @@ package fleet
 import (
 	"context"
 	"errors"
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"strings"
@@ -205,11 +206,37 @@ func TestEveryFailureIsNamed(t *testing.T) {
 			if named.Member != all[bad].name || named.Op != verb || named.Lo != 8*bad || named.Hi != 8*bad+8 {
 				t.Errorf("%s, member %d fails: %+v", verb, bad, named)
 			}
+			if err := f.Keep(context.Background()); !errors.Is(err, ErrApart) || !errors.Is(err, broken) {
+				t.Errorf("keep after a failed %s: %v", verb, err)
+			}
 			for _, s := range all {
 				if !s.verbs[verb] {
 					t.Errorf("%s did not reach member %s", verb, s.name)
 				}
 			}
+		}
+	}
+}
+
+// A verb that every member refuses leaves the fleet as it was; one that only some
+// refuse does not.
+func TestRefusals(t *testing.T) {
+	for _, some := range []bool{false, true} {
+		all, f := stubs(t, 1, 2)
+		for i, s := range all {
+			s.after, s.ended = nil, nil
+			if i == 0 || !some {
+				s.fail = fmt.Errorf("%w: not now", ErrRefused)
+			}
+		}
+		if err := f.Keep(context.Background()); !errors.Is(err, ErrRefused) {
+			t.Errorf("Keep refused: %v", err)
+		}
+		for _, s := range all {
+			s.fail = nil
+		}
+		if err := f.Keep(context.Background()); errors.Is(err, ErrApart) != some {
+			t.Errorf("Keep again, refused by some before %v: %v", some, err)
 		}
 	}
 }

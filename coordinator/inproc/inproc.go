@@ -4,8 +4,9 @@
 //
 // Its noun is the Space. Rows are global, zero-based, in the order of the given
 // matrix; b and x are in the units of the file. A Space is used by one goroutine
-// at a time and must be closed. After a verb has failed the blocks have come
-// apart: only Solution, Memory and Close make sense then.
+// at a time and must be closed. After a verb has failed
+// halfway the blocks have come apart: only Solution, Memory and Close make sense
+// then, and verbs say so.
 package inproc
 
 import (

@@ -2,6 +2,7 @@ package inproc
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"runtime"
@@ -9,6 +10,7 @@ import (
 
 	"go.uber.org/goleak"
 
+	"rowstead/coordinator/fleet"
 	"rowstead/coordinator/method"
 	"rowstead/coordinator/method/spacetest"
 	"rowstead/partition"
@@ -241,5 +243,32 @@ func TestFurtherRightSides(t *testing.T) {
 	}
 	if m := sp.Memory(); len(m) != 2 || m[0].Total() <= m[0].Matrix || m[0].Halo == 0 {
 		t.Errorf("Memory() = %+v", m)
+	}
+}
+
+// After a verb ended halfway no verb is sent any more, refused ones leave things
+// as they were, and x stays readable.
+func TestEndedHalfway(t *testing.T) {
+	p := spacetest.Definite(20, 20)
+	p.Symmetric = false
+	sp := build(t, p, 4, 1, precond.None)
+	ctx, cancel := context.WithCancel(context.Background())
+	if err := sp.Keep(ctx); !errors.Is(err, fleet.ErrRefused) {
+		t.Errorf("Keep of nothing: %v", err)
+	}
+	if _, err := sp.Check(ctx); err != nil {
+		t.Errorf("Check after a refusal: %v", err)
+	}
+	cancel()
+	if _, err := sp.Check(ctx); !errors.Is(err, context.Canceled) {
+		t.Errorf("Check under a cancelled context: %v", err)
+	}
+	if _, err := sp.Check(context.Background()); !errors.Is(err, fleet.ErrApart) {
+		t.Errorf("Check after one that ended halfway: %v", err)
+	}
+	for i, x := range sp.Solution() {
+		if x != p.Guess[i] {
+			t.Fatalf("x[%d] = %v, want %v", i, x, p.Guess[i])
+		}
 	}
 }
