@@ -34,7 +34,7 @@ const (
 
 // calmBasis is a basis condition that shows a whole cycle was built with more
 // full steps than it needed.
-const calmBasis = 1e2
+const calmBasis = 1e4
 
 // ladder remembers over the cycles how carefully the basis must be built.
 type ladder struct {
