@@ -28,6 +28,9 @@ func WriteDense(path string, d *Dense, w WriteOptions) error {
 		}
 	}
 	fill := func(out io.Writer) error { return denseText(out, d, w.Comment) }
+	if strings.HasSuffix(plainName(path), ".npy") {
+		fill = func(out io.Writer) error { return denseNpy(out, d) }
+	}
 	return writeWhole(realDisk{}, path, w, fill)
 }
 
