@@ -65,13 +65,34 @@ func (q *QR) TransposeApply(v, out []float64) {
 	if len(v) != q.rows || len(out) > q.columns {
 		panic("small: TransposeApply needs len(v) = rows and len(out) ≤ columns")
 	}
-	x := q.vector
-	copy(x, v)
-	for b := 0; b*blockColumns < len(out); b++ {
+	q.load(0, v, 1)
+	q.applySingle(len(out))
+	for i := range out {
+		out[i] = q.sign[i] * q.piece[i*lanes]
+	}
+}
+
+// applySingle is apply for one column, in lane 0 of the piece. The assembly
+// kernels turn eight lanes as fast as the reflectors arrive from memory; without
+// them the column is turned alone. The bits are the same.
+func (q *QR) applySingle(n int) {
+	if wide() {
+		for j := 1; j < lanes; j++ {
+			q.clear(j)
+		}
+		q.apply(1, n)
+		return
+	}
+	strip, x := q.strip(0), q.vector
+	for i := range x {
+		x[i] = strip[i*lanes]
+	}
+	for b := 0; b*blockColumns < n; b++ {
 		q.applyToVector(x, b)
 	}
-	for i := range out {
-		out[i] = q.sign[i] * x[i]
+	for i := range x {
+		strip[i*lanes] = x[i]
+		clear(strip[i*lanes+1 : (i+1)*lanes])
 	}
 }
 
@@ -101,7 +122,9 @@ func (q *QR) transposeApplyAll(a []float64) {
 	for len(a) > 0 {
 		n := min(len(a)/q.rows, blockColumns)
 		for j := range n {
-			q.scale[j] = q.load(j, a[j*q.rows:(j+1)*q.rows])
+			column := a[j*q.rows : (j+1)*q.rows]
+			q.scale[j] = powerOfTwo(largestOf(column))
+			q.load(j, column, q.scale[j])
 		}
 		strips := (n + lanes - 1) / lanes
 		for j := n; j < strips*lanes; j++ {

@@ -115,20 +115,18 @@ func rowUpdate(x []float64, lane int, scale float64, w *[lanes]float64) {
 
 // vectorGram adds Vᵀ·x to w for a strip V and a vector x: gramGo for one column.
 func vectorGram(w *[lanes]float64, v, x []float64) {
-	w0, w1, w2, w3, w4, w5, w6, w7 := w[0], w[1], w[2], w[3], w[4], w[5], w[6], w[7]
-	for i := 0; i < len(x) && len(v) >= lanes; i++ {
-		a, xi := (*[lanes]float64)(v), x[i]
-		w0 += float64(xi * a[0])
-		w1 += float64(xi * a[1])
-		w2 += float64(xi * a[2])
-		w3 += float64(xi * a[3])
-		w4 += float64(xi * a[4])
-		w5 += float64(xi * a[5])
-		w6 += float64(xi * a[6])
-		w7 += float64(xi * a[7])
-		v = v[lanes:]
+	for j := 0; j < lanes; j += 4 {
+		w0, w1, w2, w3 := w[j], w[j+1], w[j+2], w[j+3]
+		v := v[:lanes*len(x)]
+		for i, f := range x {
+			k := i*lanes + j
+			w0 += float64(f * v[k])
+			w1 += float64(f * v[k+1])
+			w2 += float64(f * v[k+2])
+			w3 += float64(f * v[k+3])
+		}
+		w[j], w[j+1], w[j+2], w[j+3] = w0, w1, w2, w3
 	}
-	*w = [lanes]float64{w0, w1, w2, w3, w4, w5, w6, w7}
 }
 
 // vectorUpdate subtracts V·w from x: updateGo for one column.

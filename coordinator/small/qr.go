@@ -28,7 +28,7 @@ type QR struct {
 	scale   [blockColumns]float64
 	product [blockStrips][blockStrips]square // Vᵀ·C by strips of C and of V
 	turned  [blockStrips][blockStrips]square // Tᵀ·Vᵀ·C
-	vector  []float64                        // of TransposeApply
+	vector  []float64                        // of applySingle
 }
 
 // NewQR makes room for a factorisation of rows × capacity, capacity ≤ rows:
@@ -91,13 +91,19 @@ func (q *QR) Append(cols []float64) {
 // appendPiece appends n ≤ 32 columns.
 func (q *QR) appendPiece(cols []float64, n int) {
 	for j := range n {
-		q.scale[j] = q.load(j, cols[j*q.rows:(j+1)*q.rows])
+		column := cols[j*q.rows : (j+1)*q.rows]
+		q.scale[j] = powerOfTwo(largestOf(column))
+		q.load(j, column, q.scale[j])
 	}
 	strips := (n + lanes - 1) / lanes
-	for j := n; j < strips*lanes; j++ {
-		q.clear(j)
+	if n == 1 {
+		q.applySingle(q.columns)
+	} else {
+		for j := n; j < strips*lanes; j++ {
+			q.clear(j)
+		}
+		q.apply(strips, q.columns)
 	}
-	q.apply(strips, q.columns)
 	for a := range strips {
 		q.factorStrip(a, strips, min(lanes, n-a*lanes))
 	}

@@ -279,3 +279,13 @@ func BenchmarkAppend(b *testing.B) {
 		})
 	}
 }
+
+func BenchmarkTransposeApply(b *testing.B) {
+	const s, k = 4144, 1000
+	q, v, out := NewQR(s, k), tall(2, s, 1), make([]float64, k)
+	q.Append(tall(1, s, k))
+	b.SetBytes(s * k * 8)
+	for b.Loop() {
+		q.TransposeApply(v, out)
+	}
+}
