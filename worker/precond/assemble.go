@@ -55,6 +55,9 @@ func assembleIn[F float32 | float64](a *csr.Matrix, o Options, r *Report, factor
 		}
 		f.parts[p] = pack[F](own[0], factors)
 		f.parts[p].long = long
+		for b := range factors {
+			factors[b].lower, factors[b].upper = nil, nil // packed: free the memory
+		}
 		trials[p] = f.parts[p].try(own, blocks, factors)
 	})
 	r.PositiveDefinite = o.Symmetric

