@@ -7,19 +7,17 @@ import (
 )
 
 // settle writes the sums of a node's own block over the six places from mid on
-// and takes out those that are zero: two equal members on both sides cancel.
+// and closes the gaps where they are zero: two equal members on both sides cancel.
 func (l *line) settle(mid int, own [6]float64) {
-	cols, vals := append([]int32(nil), l.cols[mid:]...), append([]float64(nil), l.vals[mid:]...)
-	l.cols, l.vals = l.cols[:mid], l.vals[:mid]
-	for k, c := range cols {
-		v := vals[k]
-		if k < 6 {
-			v = own[k]
-		}
-		if v != 0 {
-			l.add(int(c), v)
+	copy(l.vals[mid:], own[:])
+	kept := mid
+	for k := mid; k < len(l.cols); k++ {
+		if l.vals[k] != 0 {
+			l.cols[kept], l.vals[kept] = l.cols[k], l.vals[k]
+			kept++
 		}
 	}
+	l.cols, l.vals = l.cols[:kept], l.vals[:kept]
 }
 
 // load is the force (N) on freedom r of a node: pallets on five nodes of six,

@@ -4,6 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/binary"
 	"encoding/hex"
+	"errors"
 	"math"
 	"strings"
 	"testing"
@@ -174,7 +175,7 @@ func TestModelStreamsTheSameRows(t *testing.T) {
 			t.Fatal(err)
 		}
 		seen, right := 0, m.Right()
-		err = m.EachRow(func(row int, cols []int32, vals []float64) error {
+		err = m.Rows(func(row int, cols []int32, vals []float64) error {
 			wantCols, wantVals := j.Matrix.Row(row)
 			if row != seen || len(cols) != len(wantCols) {
 				t.Fatalf("%s: row %d of %d entries came as number %d", name, row, len(cols), seen)
@@ -190,8 +191,8 @@ func TestModelStreamsTheSameRows(t *testing.T) {
 			seen++
 			return nil
 		})
-		if err != nil || seen != m.Rows() || m.Entries() != j.Matrix.Entries() {
-			t.Errorf("%s: %d of %d rows, %d of %d entries, error %v", name, seen, m.Rows(), m.Entries(), j.Matrix.Entries(), err)
+		if err != nil || seen != m.Size() || m.Entries() != j.Matrix.Entries() {
+			t.Errorf("%s: %d of %d rows, %d of %d entries, error %v", name, seen, m.Size(), m.Entries(), j.Matrix.Entries(), err)
 		}
 	}
 }
@@ -214,7 +215,7 @@ func TestNotesAndLabels(t *testing.T) {
 				t.Errorf("%s: a line of %d characters: %s", name, len([]rune(text)), text)
 			}
 		}
-		if a, b := m.Label(0), m.Label(m.Rows()-1); a == "" || a == b {
+		if a, b := m.Label(0), m.Label(m.Size()-1); a == "" || a == b {
 			t.Errorf("%s: labels %q and %q", name, a, b)
 		}
 	}
@@ -237,5 +238,28 @@ func TestRefusals(t *testing.T) {
 	}
 	if _, err := Describe("bridge"); err == nil {
 		t.Errorf("Describe of an unknown job gave no error")
+	}
+}
+
+// The k-th refusal of the receiver ends the walk with its own error.
+func TestWalkEndsWithTheReceiversError(t *testing.T) {
+	m, err := Open("pipes", 300)
+	if err != nil {
+		t.Fatal(err)
+	}
+	full := errors.New("disk full")
+	for _, last := range []int{0, 1, 299} {
+		got := m.Rows(func(row int, _ []int32, _ []float64) error {
+			if row == last {
+				return full
+			}
+			if row > last {
+				t.Fatalf("row %d after the error in row %d", row, last)
+			}
+			return nil
+		})
+		if got != full {
+			t.Errorf("error in row %d came back as %v", last, got)
+		}
 	}
 }
