@@ -24,10 +24,18 @@ func Dots[F Element](out, w []float64, cols [][]F, r Range) {
 
 // SumSquares returns Σ_{i in r} w[i]², tiles added in order from zero.
 func SumSquares[F Element](w []F, r Range) float64 {
+	var scratch [Tile]float64
+	wide, isWide := any(w).([]float64)
 	total := 0.0
 	for r.Lo < r.Hi {
 		t := r.next(Tile)
-		total += sumSquaresTile(w[t.Lo:t.Hi])
+		tile := scratch[:t.Len()]
+		if isWide {
+			tile = wide[t.Lo:t.Hi]
+		} else {
+			Widen(tile, w[t.Lo:t.Hi])
+		}
+		total += dot1(tile, tile)
 	}
 	return total
 }
@@ -95,23 +103,6 @@ func dot1Go[F Element](w []float64, c []F) float64 {
 	}
 	for l := 0; i < len(w); i, l = i+1, l+1 {
 		a[l&7] += float64(w[i] * float64(c[i]))
-	}
-	return tree(&a)
-}
-
-// sumSquaresGo is sumSquaresTile in plain Go: w·w in eight lanes.
-func sumSquaresGo[F Element](w []F) float64 {
-	var a [8]float64
-	i := 0
-	for ; i+8 <= len(w); i += 8 {
-		for l, x := range (*[8]F)(w[i:]) {
-			v := float64(x)
-			a[l] += float64(v * v)
-		}
-	}
-	for l := 0; i < len(w); i, l = i+1, l+1 {
-		v := float64(w[i])
-		a[l&7] += float64(v * v)
 	}
 	return tree(&a)
 }

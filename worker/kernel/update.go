@@ -49,7 +49,7 @@ func Reduce[F Element](out, w []float64, cols [][]F, h []float64, r Range) {
 		tile := w[t.Lo:t.Hi]
 		updateTile(tile, cols, h, t.Lo)
 		dotsTile(out, tile, cols, t.Lo)
-		out[len(cols)] += sumSquaresTile(tile)
+		out[len(cols)] += dot1(tile, tile)
 	}
 }
 
@@ -81,15 +81,15 @@ func (n *Next[F]) Form(gram []float64, r Range) {
 		updateTile(tile, n.Cols, n.H, t.Lo)
 		scaleInto(n.B[t.Lo:t.Hi], tile, scale)
 		dotsTile(gram, tile, n.Window, t.Lo)
-		gram[len(n.Window)] += sumSquaresTile(tile)
+		gram[len(n.Window)] += dot1(tile, tile)
 	}
 }
 
-// scaleInto sets tile ← tile·scale rounded to F, and stores it in b too.
-func scaleInto[F Element](b []F, tile []float64, scale float64) {
+// scaleGo is scaleInto in plain Go: b ← tile·factor rounded to F, tile ← b.
+func scaleGo[F Element](b []F, tile []float64, factor float64) {
 	b = b[:len(tile)]
 	for i, v := range tile {
-		s := F(v * scale)
+		s := F(v * factor)
 		b[i], tile[i] = s, float64(s)
 	}
 }

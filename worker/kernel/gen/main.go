@@ -18,7 +18,8 @@ import (
 
 func main() {
 	sets := map[string]func(){
-		"sketch": sketchGroups,
+		"sketch":  sketchGroups,
+		"vectors": vectors,
 	}
 	set := flag.String("set", "", "which routines to write")
 	flag.Parse()
