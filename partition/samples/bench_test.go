@@ -14,11 +14,11 @@ func BenchmarkRows(b *testing.B) {
 			b.SetBytes(12 * int64(m.Entries()))
 			b.ReportAllocs()
 			for b.Loop() {
-				if err := m.Rows(func(int, []int32, []float64) error { return nil }); err != nil {
+				if err := m.EachRow(func(int, []int32, []float64) error { return nil }); err != nil {
 					b.Fatal(err)
 				}
 			}
-			b.ReportMetric(float64(m.Size())*float64(b.N)/b.Elapsed().Seconds(), "rows/s")
+			b.ReportMetric(float64(m.Rows())*float64(b.N)/b.Elapsed().Seconds(), "rows/s")
 		})
 	}
 }

@@ -26,15 +26,15 @@ func Open(name string, size int) (*Model, error) {
 	return &Model{Info: j.info, gen: j.build(size)}, nil
 }
 
-// Size is the number of unknowns and of equations.
-func (m *Model) Size() int { return m.gen.unknowns() }
+// Rows is the number of unknowns and of equations.
+func (m *Model) Rows() int { return m.gen.unknowns() }
 
 // Each calls yield with every row in order: the columns, ascending, their
 // values, and the right side. The slices are reused in the next call. An error
 // of yield ends the walk and is returned as it is.
 func (m *Model) Each(yield func(row int, cols []int32, vals []float64, right float64) error) error {
 	var l line
-	for k := range m.Size() {
+	for k := range m.Rows() {
 		l.reset()
 		m.gen.row(k, &l)
 		if err := yield(k, l.cols, l.vals, l.right); err != nil {
@@ -44,8 +44,8 @@ func (m *Model) Each(yield func(row int, cols []int32, vals []float64, right flo
 	return nil
 }
 
-// Rows is Each without the right side.
-func (m *Model) Rows(yield func(row int, cols []int32, vals []float64) error) error {
+// EachRow is Each without the right side.
+func (m *Model) EachRow(yield func(row int, cols []int32, vals []float64) error) error {
 	return m.Each(func(row int, cols []int32, vals []float64, _ float64) error { return yield(row, cols, vals) })
 }
 
@@ -53,7 +53,7 @@ func (m *Model) Rows(yield func(row int, cols []int32, vals []float64) error) er
 func (m *Model) Entries() int {
 	var l line
 	count := 0
-	for k := range m.Size() {
+	for k := range m.Rows() {
 		l.reset()
 		m.gen.row(k, &l)
 		count += len(l.cols)
@@ -61,9 +61,9 @@ func (m *Model) Entries() int {
 	return count
 }
 
-// Right makes b, length Size.
+// Right makes b, length Rows.
 func (m *Model) Right() []float64 {
-	b := make([]float64, m.Size())
+	b := make([]float64, m.Rows())
 	var l line
 	for k := range b {
 		l.reset()
@@ -74,7 +74,7 @@ func (m *Model) Right() []float64 {
 }
 
 // Label says what entry k of x is, for a file of labels: the unknown, where it
-// is, its unit. 0 ≤ k < Size.
+// is, its unit. 0 ≤ k < Rows.
 func (m *Model) Label(k int) string { return m.gen.label(k) }
 
 // Notes is the text that belongs beside the files: the question, the model, the

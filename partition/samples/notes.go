@@ -35,7 +35,7 @@ func (s story) text(m *Model) string {
 		}
 	}
 	out.WriteString(office + "\n" + s.sheet + "\n")
-	fmt.Fprintf(&out, "%d unknowns, matrix %s\n", m.Size(), m.kind())
+	fmt.Fprintf(&out, "%d unknowns, matrix %s\n", m.Rows(), m.kind())
 	paragraph("Question", s.question)
 	paragraph("Model", s.model)
 	paragraph("Boundaries and loads", s.boundaries)

@@ -109,10 +109,10 @@ func New(name string, size int) (*Job, error) {
 	if err != nil {
 		return nil, err
 	}
-	j := &Job{Info: m.Info, Right: make([]float64, m.Size()), Notes: m.Notes()}
-	a := &csr.Matrix{Rows: m.Size(), Cols: m.Size(), Start: make([]int, 1, m.Size()+1)}
+	j := &Job{Info: m.Info, Right: make([]float64, m.Rows()), Notes: m.Notes()}
+	a := &csr.Matrix{Rows: m.Rows(), Cols: m.Rows(), Start: make([]int, 1, m.Rows()+1)}
 	var l line
-	for k := range m.Size() {
+	for k := range m.Rows() {
 		l.reset()
 		m.gen.row(k, &l)
 		a.Col, a.Val = append(a.Col, l.cols...), append(a.Val, l.vals...)

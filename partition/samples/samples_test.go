@@ -175,7 +175,7 @@ func TestModelStreamsTheSameRows(t *testing.T) {
 			t.Fatal(err)
 		}
 		seen, right := 0, m.Right()
-		err = m.Rows(func(row int, cols []int32, vals []float64) error {
+		err = m.EachRow(func(row int, cols []int32, vals []float64) error {
 			wantCols, wantVals := j.Matrix.Row(row)
 			if row != seen || len(cols) != len(wantCols) {
 				t.Fatalf("%s: row %d of %d entries came as number %d", name, row, len(cols), seen)
@@ -191,8 +191,8 @@ func TestModelStreamsTheSameRows(t *testing.T) {
 			seen++
 			return nil
 		})
-		if err != nil || seen != m.Size() || m.Entries() != j.Matrix.Entries() {
-			t.Errorf("%s: %d of %d rows, %d of %d entries, error %v", name, seen, m.Size(), m.Entries(), j.Matrix.Entries(), err)
+		if err != nil || seen != m.Rows() || m.Entries() != j.Matrix.Entries() {
+			t.Errorf("%s: %d of %d rows, %d of %d entries, error %v", name, seen, m.Rows(), m.Entries(), j.Matrix.Entries(), err)
 		}
 	}
 }
@@ -215,7 +215,7 @@ func TestNotesAndLabels(t *testing.T) {
 				t.Errorf("%s: a line of %d characters: %s", name, len([]rune(text)), text)
 			}
 		}
-		if a, b := m.Label(0), m.Label(m.Size()-1); a == "" || a == b {
+		if a, b := m.Label(0), m.Label(m.Rows()-1); a == "" || a == b {
 			t.Errorf("%s: labels %q and %q", name, a, b)
 		}
 	}
@@ -249,7 +249,7 @@ func TestWalkEndsWithTheReceiversError(t *testing.T) {
 	}
 	full := errors.New("disk full")
 	for _, last := range []int{0, 1, 299} {
-		got := m.Rows(func(row int, _ []int32, _ []float64) error {
+		got := m.EachRow(func(row int, _ []int32, _ []float64) error {
 			if row == last {
 				return full
 			}
