@@ -33,6 +33,8 @@ type Options struct {
 	// Behind starts a task beside the recurrence and returns its wait function.
 	// nil runs the task at once; the bits are the same either way.
 	Behind func(task func()) (wait func())
+
+	handOver bool // Auto's own: another method follows where this one is slow
 }
 
 // Progress is how far a solve has come. Estimate is of the same kind as True

@@ -12,6 +12,9 @@ import (
 // every o.Cycle steps: the honest reference for the sketched method, and the
 // method for short problems. Saad, Iterative Methods for Sparse Linear Systems,
 // 2nd ed., section 6.5.
+//
+// With o.handOver a cycle that gains little ends it as stagnated: another method
+// is waiting.
 func solveOrthogonal(ctx context.Context, sp Space, o Options, res *Result) error {
 	r := &run{sp: sp, o: o, res: res}
 	still := 0
@@ -33,7 +36,11 @@ func solveOrthogonal(ctx context.Context, sp Space, o Options, res *Result) erro
 		if r.residuals.Met(o.Tolerance) || r.reason != "" {
 			break
 		}
-		if r.residuals.Inner > 0.98*start.Inner {
+		slow := 0.98
+		if o.handOver {
+			slow, still = handOverAbove, 2
+		}
+		if r.residuals.Inner > slow*start.Inner {
 			still++
 		} else {
 			still = 0
@@ -54,6 +61,10 @@ func solveOrthogonal(ctx context.Context, sp Space, o Options, res *Result) erro
 	res.ConditionHint, res.ForwardError = hints(r.residuals, r.inverse, sp.Rows())
 	return nil
 }
+
+// handOverAbove is the reduction of a whole cycle above which restarts cost so
+// much that recycling between cycles is worth more than orthogonality.
+const handOverAbove = 0.5
 
 // orthogonalCycle builds one cycle and corrects x.
 func (r *run) orthogonalCycle(ctx context.Context, conf Cycle) error {

@@ -21,9 +21,9 @@ const (
 // Solve solves A·x = b in sp from the x that sp holds. The result is met only
 // if residuals recomputed with the matrix of the workers are at or below the
 // tolerance in both norms. An error means that the surroundings failed.
-func Solve(ctx context.Context, sp Space, o Options) (Result, error) {
+func Solve(ctx context.Context, sp Space, asked Options) (Result, error) {
 	res := &Result{}
-	o, why := o.withDefaults(sp.Rows())
+	o, why := asked.withDefaults(sp.Rows())
 	res.Method = o.Method
 	if why != "" {
 		res.Story = append(res.Story, Event{Text: why})
@@ -34,6 +34,14 @@ func Solve(ctx context.Context, sp Space, o Options) (Result, error) {
 		err = solveSketched(ctx, sp, o, res)
 	case Orthogonal:
 		err = solveOrthogonal(ctx, sp, o, res)
+		if err == nil && o.handOver && !res.Residuals.Met(o.Tolerance) && res.Reason == ReasonStagnated {
+			res.Method, res.Reason = Sketched, ""
+			res.Story = append(res.Story, Event{Cycle: res.Cycles, Step: res.Steps, Products: res.Products,
+				Text: "restarts gain too little: on with the sketched method, which keeps directions between cycles"})
+			asked.Method, asked.Cycle = Sketched, min(orDefault(asked.Cycle, defaultCycle), defaultCycle)
+			o, _ = asked.withDefaults(sp.Rows())
+			err = solveSketched(ctx, sp, o, res)
+		}
 	case CG:
 		conjugate, ok := sp.(ConjugateSpace)
 		if !ok {
@@ -72,6 +80,7 @@ func (o Options) withDefaults(rows int) (filled Options, why string) {
 		case o.Symmetric && o.DefinitePreconditioner:
 			o.Method, why = CG, "conjugate gradients: the matrix is symmetric and nothing contradicts that it is definite"
 		case rows < smallProblem || rows < 8*o.SketchRows:
+			o.handOver = o.Form == Double
 			o.Method, why = Orthogonal, fmt.Sprintf("the orthogonal method: %d unknowns are too few for sketching to pay", rows)
 			if o.Cycle == 0 {
 				cycle = max(1, min(rows, orthogonalCycle))
