@@ -24,7 +24,12 @@ type runner struct {
 	pace   report.Pace
 	column int         // the right side in work
 	x      [][]float64 // answers, in the order and units of the file
-	before int         // products of earlier attempts and right sides
+	before int         // products of earlier right sides
+	need   size        // of memory, as the header tells
+	most   float64     // bytes that may be used
+	harder bool        // the harder try is in work, or was
+	// threads says that their number was asked for.
+	threads bool
 }
 
 // Run carries out a job and fills in rec as it goes. An error says that there is
@@ -34,7 +39,8 @@ func Run(ctx context.Context, j Job, rim Rim, rec *report.Record) error {
 	r := &runner{job: j, rim: rim, rec: rec, why: map[string]string{}, begun: rim.Now()}
 	r.pace.Tolerance = j.Tolerance
 	rec.Tolerance, rec.Seed, rec.Started = report.Number(j.Tolerance), j.Seed, r.begun
-	if r.job.Threads == 0 {
+	r.threads = r.job.Threads > 0
+	if !r.threads {
 		r.job.Threads = runtime.GOMAXPROCS(0)
 	}
 	defer func() {
@@ -103,15 +109,15 @@ func (r *runner) budget(head matfile.Header) error {
 	if err != nil {
 		return err
 	}
-	allowed := r.allowed()
-	need := size{
+	r.most = r.allowed()
+	r.need = size{
 		rows: float64(head.Rows), entries: entries, columns: 1, recycle: recycled,
 		precondition: r.job.Precondition, method: r.job.Method,
 	}
-	if err := absurd(head, need, allowed); err != nil {
+	if err := absurd(head, r.need, r.most); err != nil {
 		return err
 	}
-	r.plan.form, r.why["basis"], err = need.fit(r.job, allowed)
+	r.plan.form, r.why["basis"], err = r.need.fit(r.job, r.most)
 	return err
 }
 

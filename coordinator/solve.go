@@ -64,16 +64,8 @@ func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side
 	r.placed.SetRight(r.forward(b))
 	r.placed.SetGuess(r.forward(start))
 	var last method.Result
-	err := r.timed(&r.rec.Seconds.Solve, func() error {
-		var err error
-		last, err = r.attempt(ctx, &side)
-		if err == nil && r.change(last) {
-			if err = r.placed.Prepare(ctx, r.plan.precondition, false); err == nil {
-				r.plan.conjugate = false
-				r.event("from conjugate gradients to another method: " + last.Reason)
-				last, err = r.attempt(ctx, &side)
-			}
-		}
+	err := r.timed(&r.rec.Seconds.Solve, func() (err error) {
+		last, err = r.attempts(ctx, &side)
 		return err
 	})
 	if err != nil {
@@ -94,10 +86,58 @@ func nonzero(b []float64) bool {
 	return false
 }
 
-// change says that conjugate gradients, chosen by the program, must give way.
-func (r *runner) change(last method.Result) bool {
+// attempts runs the method, another one where conjugate gradients cannot go on,
+// and a last, harder try where a run that was getting somewhere stands still.
+// Every try begins from the x of the one before.
+func (r *runner) attempts(ctx context.Context, side *report.Side) (method.Result, error) {
+	last, err := r.attempt(ctx, side)
+	if err == nil && r.giveWay(last) {
+		r.event("from conjugate gradients to another method: " + last.Reason)
+		if err = r.placed.Prepare(ctx, r.plan.precondition, false); err == nil {
+			r.plan.conjugate = false
+			last, err = r.attempt(ctx, side)
+		}
+	}
+	if err == nil && r.tryHarder(last) {
+		r.event(fmt.Sprintf("stagnated: once more with %s and a cycle of %d", r.plan.precondition, r.plan.form.cycle))
+		if err = r.placed.Prepare(ctx, r.plan.precondition, r.plan.conjugate); err == nil {
+			last, err = r.attempt(ctx, side)
+		}
+	}
+	return last, err
+}
+
+// giveWay says that conjugate gradients, chosen by the program, must give way.
+func (r *runner) giveWay(last method.Result) bool {
 	return automatic(r.job.Method) && r.plan.conjugate && !last.Met &&
 		(last.Reason == method.ReasonIndefinite || last.Reason == method.ReasonStagnated || last.Reason == method.ReasonNotFinite)
+}
+
+// hopeful is the residual below which a stagnated run was getting somewhere, so
+// that a harder try is worth its time.
+const hopeful = 0.3
+
+// tryHarder changes the plan for one more try, with a stronger preconditioner
+// and the longest cycle, as far as they were left to the program and fit; false
+// when there is nothing to change or little hope.
+func (r *runner) tryHarder(last method.Result) bool {
+	if r.harder || last.Met || last.Reason != method.ReasonStagnated || r.plan.conjugate ||
+		!(last.Residuals.TrueResidual() < hopeful && last.Residuals.ScaledResidual() < hopeful) {
+		return false
+	}
+	p, need := r.plan, r.need
+	if automatic(r.job.Precondition) && p.precondition == "ilu0" {
+		p.precondition, need.precondition = "ilut", "ilut"
+	}
+	if r.job.Cycle == 0 {
+		p.form.cycle = longestCycle
+	}
+	changed := p.precondition != r.plan.precondition || r.job.Cycle == 0
+	if !changed || need.total(p.form) > r.most {
+		return false
+	}
+	r.plan, r.harder = p, true
+	return true
 }
 
 // attempt runs one method and adds its counts to the side's.
@@ -141,7 +181,7 @@ func (r *runner) options(base int) method.Options {
 		Symmetric: r.plan.conjugate, DefinitePreconditioner: r.plan.conjugate,
 		Stop: r.rim.Stop, Observe: func(p method.Progress) { r.observe(base, p) },
 	}
-	if o.Cycle == 0 && r.plan.form.cycle != longestCycle {
+	if o.Cycle == 0 && (r.harder || r.plan.form.cycle != longestCycle) {
 		o.Cycle = r.plan.form.cycle
 	}
 	if r.job.Threads > 1 {

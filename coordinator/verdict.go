@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"rowstead/coordinator/method"
@@ -122,7 +123,7 @@ func advice(reason string, res method.Residuals, j Job, p plan) string {
 		return "the numbers left the range of 64-bit floats; look for entries that are far too large"
 	}
 	var tries []string
-	if p.precondition != "ilut" {
+	if p.precondition != "ilut" && j.Precondition != "ilut" {
 		tries = append(tries, "--precondition ilut")
 	}
 	if len(p.cuts.Starts()) > 1 {
@@ -146,14 +147,31 @@ func (r *runner) tellChoices() {
 	r.choose("precondition", r.rec.Precondition, r.why["precondition"], !automatic(r.job.Precondition))
 	if k := r.placed.longest; k.Capacity > 0 {
 		r.rec.Basis = string(k.Form)
-		r.choose("cycle", fmt.Sprint(k.Capacity-1), r.why["basis"], r.job.Cycle > 0)
+		r.choose("cycle", fmt.Sprint(k.Capacity-1), r.cycleReason(), r.job.Cycle > 0)
 		r.choose("basis", string(k.Form), r.why["basis"], !automatic(r.job.Basis))
 		if k.SketchRows > 0 {
 			r.choose("sketch", fmt.Sprintf("%d rows", k.SketchRows), fmt.Sprintf("four times the longest cycle and what is kept; %d nonzeros a row, seed %d", k.Zeta, r.job.Seed), r.job.SketchRows > 0)
 			r.choose("window", fmt.Sprint(k.Window), "enough for a well-conditioned basis on most problems", r.job.Window > 0)
 		}
 	}
-	r.choose("threads", fmt.Sprint(r.job.Threads), "", false)
+	r.choose("threads", fmt.Sprint(r.job.Threads), "", r.threads)
+	arrange(r.rec.Choices)
+}
+
+// cycleReason says why the cycle is as long as it is.
+func (r *runner) cycleReason() string {
+	if r.harder && r.job.Cycle == 0 {
+		return "shorter cycles stagnated"
+	}
+	return r.why["basis"]
+}
+
+// arrange puts choices into the order in which a reader wants them.
+func arrange(list []report.Choice) {
+	order := []string{"method", "precondition", "order", "scaling", "blocks", "cycle", "basis", "sketch", "window", "memory", "threads"}
+	slices.SortStableFunc(list, func(a, b report.Choice) int {
+		return slices.Index(order, a.Name) - slices.Index(order, b.Name)
+	})
 }
 
 // factored names what became of the preconditioner and remembers why.

@@ -160,7 +160,7 @@ func (a *app) commands() *cobra.Command {
 	root.SetHelpFunc(func(c *cobra.Command, _ []string) { showHelp(a.stdout, c) })
 	root.SetHelpCommand(a.helpCommand(root))
 	cobra.EnableCommandSorting = false
-	root.AddCommand(a.solveCommand(), a.sampleCommand(), a.runsCommand(), a.showCommand(), a.resumeCommand(), a.versionCommand())
+	root.AddCommand(a.solveCommand(), a.auditCommand(), a.sampleCommand(), a.runsCommand(), a.showCommand(), a.resumeCommand(), a.versionCommand())
 	for _, c := range root.Commands() {
 		c.Flags().SortFlags = false
 		c.DisableFlagsInUseLine = true

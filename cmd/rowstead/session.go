@@ -24,6 +24,9 @@ type session struct {
 	run   records.Run    // the folder; none when ID is empty
 	old   *report.Record // of the run that is carried on, or nil
 	rec   *report.Record
+	// opened says that the inputs are good, so that the record may replace that of
+	// an earlier try.
+	opened bool
 }
 
 // solve runs a session and prints its result.
@@ -42,8 +45,7 @@ func (a *app) solve(s *session) error {
 	a.interrupt.gentle.Store(true) // what follows is short and should be whole
 	a.screen.clear()
 	if err != nil {
-		s.rec.State = report.BrokenOff
-		s.rec.Error = oneLine(err)
+		s.rec.State, s.rec.Error = report.BrokenOff, oneLine(err)
 		a.save(s)
 		return err
 	}
@@ -70,9 +72,7 @@ func (a *app) rim(s *session) coordinator.Rim {
 		Phase: func(state string) {
 			s.rec.State = state
 			a.interrupt.gentle.Store(state == report.Stepping || state == report.Checking)
-			if s.rec.ID != "" {
-				a.save(s)
-			}
+			a.save(s)
 		},
 		Opened: func(*report.Record) { a.openRun(s) },
 		Progress: func(p report.Progress) {
@@ -93,6 +93,7 @@ func (a *app) rim(s *session) coordinator.Rim {
 // openRun makes the folder of the run. Without one the run goes on: the answer
 // matters more than its record.
 func (a *app) openRun(s *session) {
+	s.opened = true
 	if s.run.ID != "" {
 		return
 	}
@@ -108,9 +109,10 @@ func (a *app) openRun(s *session) {
 	s.rec.ID, s.rec.Path = s.run.ID, s.run.RecordPath()
 }
 
-// save writes the record where there is a folder for it.
+// save writes the record where there is a folder for it and the inputs are known
+// to be good.
 func (a *app) save(s *session) {
-	if s.run.ID == "" {
+	if s.run.ID == "" || !s.opened {
 		return
 	}
 	if err := s.run.Save(s.rec); err != nil {

@@ -13,7 +13,6 @@ import (
 	"rowstead/cmd/internal/quantity"
 	"rowstead/coordinator"
 	"rowstead/coordinator/method"
-	"rowstead/partition/matfile"
 )
 
 // solveFlags are the flags of solve, which resume reads again from a record.
@@ -117,14 +116,9 @@ func (s *solveFlags) check(f *pflag.FlagSet) error {
 	fault(j.Basis == "replay" && j.Method == method.Orthogonal, "--basis replay has window steps alone; take --method sketched with it")
 	fault(j.Blocks > 0 && j.Cuts != "", "--blocks and --cuts both say where blocks begin; give one")
 	fault(j.Trial && j.Right != "", "--trial makes its own right side; leave %s out", j.Right)
-	switch s.indexBase {
-	case 0:
-		j.IndexBase = matfile.ZeroBased
-	case 1:
-		j.IndexBase = matfile.OneBased
-	default:
-		fault(f.Changed("index-base"), "--index-base %d: expected 0 or 1", s.indexBase)
-	}
+	var err error
+	j.IndexBase, err = base(s.indexBase, f.Changed("index-base"))
+	fault(err != nil, "%v", err)
 	if len(faults) == 0 {
 		return nil
 	}
