@@ -65,24 +65,19 @@ func (q *QR) TransposeApply(v, out []float64) {
 	if len(v) != q.rows || len(out) > q.columns {
 		panic("small: TransposeApply needs len(v) = rows and len(out) ≤ columns")
 	}
-	q.load(0, v, 1)
-	q.applySingle(len(out))
+	x := q.vector
+	copy(x, v)
+	for b := 0; b*blockColumns < len(out); b++ {
+		q.applyToVector(x, b)
+	}
 	for i := range out {
-		out[i] = q.sign[i] * q.piece[i*lanes]
+		out[i] = q.sign[i] * x[i]
 	}
 }
 
-// applySingle is apply for one column, in lane 0 of the piece. The assembly
-// kernels turn eight lanes as fast as the reflectors arrive from memory; without
-// them the column is turned alone. The bits are the same.
+// applySingle is apply for one column, in lane 0 of the piece, with the same
+// bits. Turned alone it keeps pace with the reflectors' way through memory.
 func (q *QR) applySingle(n int) {
-	if wide() {
-		for j := 1; j < lanes; j++ {
-			q.clear(j)
-		}
-		q.apply(1, n)
-		return
-	}
 	strip, x := q.strip(0), q.vector
 	for i := range x {
 		x[i] = strip[i*lanes]

@@ -7,6 +7,3 @@ func gram(w *square, v, c []float64) { gramGo(w, v, c) }
 
 // update subtracts V·W from C, see updateGo; c and v have the same length.
 func update(c, v []float64, w *square) { updateGo(c, v, w) }
-
-// wide tells whether eight lanes cost less than eight columns.
-func wide() bool { return false }

@@ -35,6 +35,3 @@ func update(c, v []float64, w *square) {
 		updateGo(c, v, w)
 	}
 }
-
-// wide tells whether eight lanes cost less than eight columns.
-func wide() bool { return cpu.X86.HasAVX2 }

@@ -8,8 +8,5 @@ func (q *QR) Project(v, out []float64) (outside float64) {
 		panic("small: Project needs len(out) = columns")
 	}
 	q.TransposeApply(v, out)
-	for i := range q.vector {
-		q.vector[i] = q.piece[i*lanes]
-	}
 	return norm(q.vector[q.columns:])
 }

@@ -19,6 +19,7 @@ type cycleData struct {
 	h       *Hessenberg
 	su      []float64
 	sw, scw []float64 // s×m, for the dense answer
+	basis   []float64 // s×(k+1)
 }
 
 // operatorOf is an upper bidiagonal-plus-blocks matrix with given eigenvalues:
@@ -79,6 +80,7 @@ func runCycle(o operatorOf, u []float64, d, k, window int) *cycleData {
 		c.q.R().Combine(column, d+lo, h)
 		c.h.Append(column)
 	}
+	c.basis = b
 	c.su, c.sw = u, append(append([]float64(nil), u...), b[:k*s]...)
 	c.scw = append(append([]float64(nil), cu...), make([]float64, k*s)...)
 	for j := range k {
