@@ -9,6 +9,7 @@ import (
 )
 
 //go:generate go -C gen run . -set vectors -pkg kernel -out ../vectors_amd64.s -stubs ../vectors_amd64.go
+//go:generate go -C gen run . -set product -pkg kernel -out ../product_amd64.s -stubs ../product_amd64.go
 
 // path is a set of instructions for the inner loops. All give the same bits.
 type path int
@@ -132,4 +133,13 @@ func scaleInto[F Element](b []F, tile []float64, factor float64) {
 	default:
 		scaleSingleAVX2(as32(b), as64(tile), &factor, n)
 	}
+}
+
+// mul sets out[i] to row i of A·x; see mulGo.
+func mul(out []float64, ends []int, col []int32, val, x []float64, first int) {
+	if chosen == plain || len(col) == 0 {
+		mulGo(out, ends, col, val, x, first)
+		return
+	}
+	mulRows(&out[0], &ends[0], &col[0], &val[0], unsafe.SliceData(x), first, len(out))
 }

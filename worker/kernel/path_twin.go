@@ -17,3 +17,7 @@ func update4[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
 func update1[F Element](w []float64, h float64, c []F) { update1Go(w, h, c) }
 
 func scaleInto[F Element](b []F, tile []float64, factor float64) { scaleGo(b, tile, factor) }
+
+func mul(out []float64, ends []int, col []int32, val, x []float64, first int) {
+	mulGo(out, ends, col, val, x, first)
+}

@@ -7,18 +7,28 @@ import (
 )
 
 // Mul forms y[r] = (A·x)[r]. len(x) = Cols, len(y) = Rows. Each row is summed
-// in column order from zero, so it has the bits of csr's Mul.
+// in column order from zero, so it has the bits of csr's Mul. a has passed its
+// Check: a column beyond Cols is read without one.
 func Mul(y []float64, a *csr.Matrix, x []float64, r Range) {
 	if len(x) != a.Cols || len(y) != a.Rows {
 		panic("kernel: lengths disagree in Mul")
 	}
-	// Cutting columns and values to the row leaves bounds checks on x alone.
 	ends := a.Start[r.Lo+1 : r.Hi+1]
-	out := y[r.Lo:r.Hi]
+	out, first := y[r.Lo:r.Hi], a.Start[r.Lo]
+	if len(ends) > 0 {
+		last := ends[len(ends)-1]
+		mul(out, ends, a.Col[:last], a.Val[:last], x, first)
+	}
+}
+
+// mulGo is mul in plain Go: out[i] = row i of A·x, with entries from the end of
+// the row before, from first for row 0, to ends[i].
+func mulGo(out []float64, ends []int, col []int32, val, x []float64, first int) {
+	// Cutting columns and values to the row leaves bounds checks on x alone.
 	out = out[:len(ends)]
-	k := a.Start[r.Lo]
+	k := first
 	for i, e := range ends {
-		cols, vals := a.Col[k:e], a.Val[k:e]
+		cols, vals := col[k:e], val[k:e]
 		vals = vals[:len(cols)]
 		sum := 0.0
 		for j, c := range cols {

@@ -18,6 +18,7 @@ import (
 
 func main() {
 	sets := map[string]func(){
+		"product": product,
 		"sketch":  sketchGroups,
 		"vectors": vectors,
 	}
