@@ -144,13 +144,23 @@ func (b *Block) rescale(row, column []int16) {
 
 // scaled returns v·2^e.
 func scaled(v float64, e int) float64 {
-	if e == 0 {
-		return v
+	if uint(e+1022) > 2045 { // 2^e is no normal number
+		return math.Ldexp(v, e)
 	}
-	if -1022 <= e && e <= 1023 {
-		return v * math.Float64frombits(uint64(1023+e)<<52)
+	return v * math.Float64frombits(uint64(1023+e)<<52)
+}
+
+// scaledBy sets dst[i] = v[i]·2^(sign·e[i]); dst may be v.
+func scaledBy(dst, v []float64, e []int16, sign int) {
+	dst, e = dst[:len(v)], e[:len(v)]
+	for i, x := range v {
+		k := sign * int(e[i])
+		if uint(k+1022) > 2045 {
+			dst[i] = math.Ldexp(x, k)
+			continue
+		}
+		dst[i] = x * math.Float64frombits(uint64(1023+k)<<52)
 	}
-	return math.Ldexp(v, e)
 }
 
 // matrixSums finds the largest entry of every row, as it stands after scaling by
@@ -182,19 +192,26 @@ func (b *Block) matrixSums() {
 	}
 }
 
-// rightSums finds the constants of b.
+// rightSums finds the constants of b, in the order in which residuals are summed:
+// at x = 0 they are the same to the last bit.
 func (b *Block) rightSums() {
 	parts := make([]constants, len(b.strips))
 	b.each(func(strip int, r kernel.Range) {
 		part := &parts[strip]
-		for i := r.Lo; i < r.Hi; i++ {
-			v := b.right[i]
-			inner := scaled(v, int(b.row[i]))
-			square(&part.right, v)
-			square(&part.innerRight, inner)
-			square(&part.scaledRight, inner/b.entry[i])
-			part.rightMax = max(part.rightMax, math.Abs(v))
-		}
+		var turn [kernel.Tile]float64
+		tiles(r, func(t kernel.Range) {
+			v, inner := b.right[t.Lo:t.Hi], turn[:t.Len()]
+			addTileSquares(&part.right, v)
+			for _, x := range v {
+				part.rightMax = max(part.rightMax, math.Abs(x))
+			}
+			scaledBy(inner, v, b.row[t.Lo:t.Hi], 1)
+			addTileSquares(&part.innerRight, inner)
+			for i := range inner {
+				inner[i] /= b.entry[t.Lo+i]
+			}
+			addTileSquares(&part.scaledRight, inner)
+		})
 	})
 	c := &b.constants
 	c.right, c.innerRight, c.scaledRight, c.rightMax = Squares{}, Squares{}, Squares{}, 0

@@ -26,18 +26,16 @@ func (b *Block) residual(ctx context.Context, v, into []float64) (ResidualSums, 
 	}
 	parts := make([]ResidualSums, len(b.strips))
 	b.each(func(strip int, r kernel.Range) {
+		var room residualRoom
 		sums := &parts[strip]
 		sums.Finite = true
-		for i := r.Lo; i < r.Hi; i++ {
-			cols, vals := b.matrix.Row(i)
-			e := int(b.row[i])
-			inner, _, size := kernel.ResidualRow(cols, vals, v, scaled(b.right[i], e))
+		tiles(r, func(t kernel.Range) {
+			b.residualRows(&room, v, t)
 			if into != nil {
-				into[i] = inner
+				copy(into[t.Lo:t.Hi], room.inner[:])
 			}
-			b.addRow(sums, i, inner, size)
-			b.addSolution(sums, scaled(v[i], b.columnExponent(i)))
-		}
+			b.addTile(sums, &room, v, t)
+		})
 	})
 	sums := ResidualSums{Finite: true}
 	for i := range parts {
@@ -52,40 +50,100 @@ func (b *Block) residual(ctx context.Context, v, into []float64) (ResidualSums, 
 	return sums, nil
 }
 
-// addRow adds row i with inner = (D·r)ᵢ and size = (D·(|A|·|x| + |b|))ᵢ.
-func (b *Block) addRow(sums *ResidualSums, i int, inner, size float64) {
-	e := -int(b.row[i])
-	plain, largest := scaled(inner, e), b.entry[i]
-	square(&sums.Inner, inner)
-	square(&sums.True, plain)
-	square(&sums.Scaled, inner/largest)
-	square(&sums.TrueFloor, scaled(size, e))
-	square(&sums.ScaledFloor, size/largest)
-	a := math.Abs(plain)
-	sums.ResidualMax = max(sums.ResidualMax, a)
-	if !(a <= math.MaxFloat64) {
-		sums.Finite = false
-		sums.addWorst(b.firstRow+i, math.Inf(1))
-		return
+// residualRoom has a tile of D·r and of D·(|A|·|x| + |b|), and a column that is
+// filled in turn.
+type residualRoom struct{ inner, size, turn [kernel.Tile]float64 }
+
+// residualRows fills room with rows t for x = v.
+func (b *Block) residualRows(room *residualRoom, v []float64, t kernel.Range) {
+	m := b.matrix
+	right := room.turn[:t.Len()]
+	scaledBy(right, b.right[t.Lo:t.Hi], b.row[t.Lo:t.Hi], 1)
+	for i := t.Lo; i < t.Hi; i++ {
+		cols, vals := m.Row(i)
+		inner, _, size := kernel.ResidualRow(cols, vals, v, right[i-t.Lo])
+		room.inner[i-t.Lo], room.size[i-t.Lo] = inner, size
 	}
-	if inner == 0 {
-		return
-	}
-	rowError := math.Abs(inner) / size
-	if rowError != rowError {
-		rowError = math.Inf(1)
-	}
-	sums.addWorst(b.firstRow+i, rowError)
 }
 
-// addSolution adds one entry of x in the units of the file.
-func (b *Block) addSolution(sums *ResidualSums, x float64) {
-	square(&sums.Solution, x)
-	a := math.Abs(x)
-	sums.SolutionMax = max(sums.SolutionMax, a)
-	if !(a <= math.MaxFloat64) {
-		sums.Finite = false
+// addTile adds the rows t in room, and those of x = v, to sums.
+func (b *Block) addTile(sums *ResidualSums, room *residualRoom, v []float64, t kernel.Range) {
+	n := t.Len()
+	inner, size, turn := room.inner[:n], room.size[:n], room.turn[:n]
+	row, entry := b.row[t.Lo:t.Hi], b.entry[t.Lo:t.Hi]
+	addTileSquares(&sums.Inner, inner)
+	for i := range turn {
+		turn[i] = inner[i] / entry[i]
 	}
+	addTileSquares(&sums.Scaled, turn)
+	for i := range turn {
+		turn[i] = size[i] / entry[i]
+	}
+	addTileSquares(&sums.ScaledFloor, turn)
+	scaledBy(turn, size, row, -1)
+	addTileSquares(&sums.TrueFloor, turn)
+	scaledBy(turn, inner, row, -1)
+	addTileSquares(&sums.True, turn)
+	sums.ResidualMax = sums.addMax(sums.ResidualMax, turn)
+	b.addRowErrors(sums, inner, size, t.Lo)
+
+	x := v[t.Lo:t.Hi]
+	if b.column != nil {
+		scaledBy(turn, x, b.column[t.Lo:t.Hi], 1)
+		x = turn
+	}
+	addTileSquares(&sums.Solution, x)
+	sums.SolutionMax = sums.addMax(sums.SolutionMax, x)
+}
+
+// addRowErrors takes the row-wise errors of a tile that begins with row first into
+// the worst; a row that is not finite counts as infinitely wrong.
+func (b *Block) addRowErrors(sums *ResidualSums, inner, size []float64, first int) {
+	least := sums.leastWorst()
+	for i, v := range inner {
+		e := math.Abs(v) / size[i]
+		if e <= least || v == 0 {
+			continue
+		}
+		if e != e {
+			e = math.Inf(1)
+		}
+		sums.addWorst(b.firstRow+first+i, e)
+		least = sums.leastWorst()
+	}
+}
+
+// leastWorst is the error that a further row must exceed to be among the worst.
+func (s *ResidualSums) leastWorst() float64 {
+	if n := len(s.WorstError); n == worstRows {
+		return s.WorstError[n-1]
+	}
+	return -1
+}
+
+// addMax returns the larger of most and ‖v‖∞, and notes what is not finite.
+func (s *ResidualSums) addMax(most float64, v []float64) float64 {
+	for _, x := range v {
+		a := math.Abs(x)
+		if a > most {
+			most = a
+		}
+		if !(a <= math.MaxFloat64) {
+			s.Finite = false
+		}
+	}
+	return most
+}
+
+// addTileSquares adds the squares of v to s. Where their plain sum is neither tiny
+// nor huge it will do: squares that underflow are below 2^-122 of it a row.
+func addTileSquares(s *Squares, v []float64) {
+	sum := kernel.SumSquares(v, kernel.Range{Lo: 0, Hi: len(v)})
+	if sum >= 0x1p-900 && sum <= 0x1p900 {
+		s[1] += sum
+		return
+	}
+	squares(s, v)
 }
 
 // addWorst takes a row into the list of the worst. Rows come in ascending order;

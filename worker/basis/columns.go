@@ -17,13 +17,9 @@ type columns[F kernel.Element] struct {
 
 // Reset implements Basis.
 func (b *columns[F]) Reset(room Room, each func(task func(r kernel.Range))) {
-	stride := columnStride(room.Rows)
 	if len(b.room) < room.Capacity || (len(b.room) > 0 && len(b.room[0]) != room.Rows) {
 		b.slab, b.room, b.cols, b.next = nil, nil, nil, kernel.Next[F]{}
-		b.slab = make([]F, room.Capacity*stride)
-		for j := range room.Capacity {
-			b.room = append(b.room, b.slab[j*stride:j*stride+room.Rows:j*stride+room.Rows])
-		}
+		b.slab, b.room = newSlab[F](room.Rows, room.Capacity)
 		each(func(r kernel.Range) { // touch
 			for _, c := range b.room {
 				clear(c[r.Lo:r.Hi])
@@ -31,6 +27,19 @@ func (b *columns[F]) Reset(room Room, each func(task func(r kernel.Range))) {
 		})
 	}
 	b.cols = b.room[:0]
+}
+
+// newSlab returns memory for so many columns, not yet touched.
+func newSlab[F kernel.Element](rows, columns int) (slab []F, room [][]F) {
+	stride := columnStride(rows)
+	slab = make([]F, columns*stride)
+	if len(slab) > 0 {
+		askForHugePages(unsafe.Pointer(&slab[0]), len(slab)*int(unsafe.Sizeof(slab[0])))
+	}
+	for j := range columns {
+		room = append(room, slab[j*stride:j*stride+rows:j*stride+rows])
+	}
+	return slab, room
 }
 
 // columnStride is the distance of two columns: an odd number of cache lines of 8

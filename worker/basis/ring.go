@@ -30,12 +30,8 @@ type Ring struct {
 func (b *Ring) Reset(room Room, each func(task func(r kernel.Range))) {
 	slots := min(room.Window+extra, max(room.Capacity, 1))
 	if len(b.slots) < slots || b.rows != room.Rows {
-		stride := columnStride(room.Rows)
 		b.slab, b.slots, b.rows = nil, nil, room.Rows
-		b.slab = make([]float64, slots*stride)
-		for j := range slots {
-			b.slots = append(b.slots, b.slab[j*stride:j*stride+room.Rows:j*stride+room.Rows])
-		}
+		b.slab, b.slots = newSlab[float64](room.Rows, slots)
 		each(func(r kernel.Range) {
 			for _, c := range b.slots {
 				clear(c[r.Lo:r.Hi])
