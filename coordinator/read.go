@@ -192,10 +192,17 @@ func fingerprint(in *report.Input) error {
 	return err
 }
 
-// changed compares the inputs with the hashes that a resumed run had.
-func changed(list []report.Input, want map[string]string) error {
+// unchanged compares the inputs with the hashes that a resumed run had.
+func unchanged(j Job) error {
+	if len(j.Hashes) == 0 {
+		return nil
+	}
+	list, err := inputs(j)()
+	if err != nil {
+		return err
+	}
 	for _, in := range list {
-		if hash, known := want[in.Role]; known && hash != in.Hash {
+		if hash, known := j.Hashes[in.Role]; known && hash != in.Hash {
 			return &InputError{fmt.Sprintf("%s: the %s has changed since the run began; solve it anew", in.Path, in.Role)}
 		}
 	}

@@ -79,6 +79,9 @@ func (r *runner) timed(into *report.Number, phase func() error) error {
 func (r *runner) read(ctx context.Context) error {
 	r.rim.Phase(report.Placing)
 	return r.timed(&r.rec.Seconds.Read, func() error {
+		if err := unchanged(r.job); err != nil {
+			return err
+		}
 		head, err := look(r.job)
 		r.rec.Rows, r.rec.Columns, r.rec.Entries = head.Rows, head.Cols, int(head.Stored)
 		if err != nil {
@@ -98,7 +101,7 @@ func (r *runner) read(ctx context.Context) error {
 		}
 		r.sys.findEmpty()
 		r.rec.Inputs, r.rec.Entries = list, r.sys.matrix.Entries()
-		return changed(list, r.job.Hashes)
+		return nil
 	})
 }
 

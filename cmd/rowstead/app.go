@@ -48,13 +48,14 @@ func newApp(stdout, stderr io.Writer) *app {
 // run carries out the command line and returns the exit status. Whatever
 // happens, a person reads one line and, with --json, a program reads one object.
 func (a *app) run(args []string) (status int) {
-	a.asked, a.json = args, wantsJSON(args)
+	a.asked = args
 	defer func() {
 		if fault := recover(); fault != nil {
 			status = a.crashed(fault, debug.Stack())
 		}
 	}()
 	root := a.commands()
+	a.json = wantsJSON(args)
 	root.SetArgs(args)
 	err := root.Execute()
 	var verdict *verdictError

@@ -32,6 +32,8 @@ func (r *Record) headline() string {
 		return "met: the answer satisfies the equations to " + tol + "."
 	case r.Verdict == Met:
 		return "met: the equations are solved to " + tol + "."
+	case r.Verdict == Short && r.Job == "audit":
+		return "short: the answer does not satisfy the equations to " + tol + "."
 	case r.Verdict == Short && r.Reason != "":
 		return "short: the tolerance " + tol + " was not reached: " + r.Reason + "."
 	case r.Verdict == Short:
@@ -157,11 +159,11 @@ func (r *Record) writeChoices(b *strings.Builder) {
 
 // writeFiles says where answer and record are.
 func (r *Record) writeFiles(b *strings.Builder) {
-	if r.Answer == "" && r.ID == "" {
+	if r.Job == "audit" || r.Answer == "" && r.ID == "" {
 		return
 	}
 	b.WriteString("\n")
-	if r.Answer != "" && r.Job != "audit" {
+	if r.Answer != "" {
 		fmt.Fprintf(b, "Answer: %s\n", r.Answer)
 	}
 	if r.ID != "" {
