@@ -94,3 +94,96 @@ func BenchmarkStream(b *testing.B) {
 		}
 	})
 }
+
+// BenchmarkFormats reads the same kind of matrix from the other formats; bytes
+// are those of the file.
+func BenchmarkFormats(b *testing.B) {
+	text := stencilText(24, 16)
+	for name, content := range map[string][]byte{
+		"gzip":   gzipped(b, text),
+		"zstd":   zstandard(b, text),
+		"boeing": []byte(boeingText(20000, 7)),
+		"npz":    npz(b, stencilArchive(20000, 7)),
+	} {
+		path := filepath.Join(b.TempDir(), "file")
+		if err := os.WriteFile(path, content, 0o644); err != nil {
+			b.Fatal(err)
+		}
+		b.Run(name, func(b *testing.B) {
+			b.SetBytes(int64(len(content)))
+			for b.Loop() {
+				if _, _, err := ReadMatrix(path, Options{Threads: 1}); err != nil {
+					b.Fatal(err)
+				}
+			}
+		})
+	}
+}
+
+// band calls put for the entries of a matrix with w entries a column.
+func band(n, w int, put func(i, j int, v float64)) {
+	rng := rand.New(rand.NewPCG(7, 7))
+	for j := range n {
+		for k := range w {
+			put((j+k*k)%n, j, rng.NormFloat64())
+		}
+	}
+}
+
+func boeingText(n, w int) string {
+	var pointer, index, value bytes.Buffer
+	count := 0
+	band(n, w, func(i, j int, v float64) {
+		count++
+		fmt.Fprintf(&index, "%8d", i+1)
+		fmt.Fprintf(&value, "%24.16E", v)
+		if count%10 == 0 {
+			index.WriteByte('\n')
+		}
+		if count%4 == 0 {
+			value.WriteByte('\n')
+		}
+	})
+	for j := range n + 1 {
+		fmt.Fprintf(&pointer, "%8d\n", j*w+1)
+	}
+	return boeing("RUA", columns(14, n, n, count, 0), formats("(I8)", "(10I8)", "(4E24.16)", ""), "", pointer.String(), index.String(), value.String())
+}
+
+func stencilArchive(n, w int) map[string][2]string {
+	var starts, indices []int32
+	var values []float64
+	band(n, w, func(i, j int, v float64) {
+		if i = len(values) % w; i == 0 {
+			starts = append(starts, int32(len(values)))
+		}
+		indices, values = append(indices, int32(j)), append(values, v)
+	})
+	starts = append(starts, int32(len(values)))
+	list := func(descr string, count int, body []byte) [2]string {
+		return [2]string{fmt.Sprintf("{'descr': '%s', 'fortran_order': False, 'shape': (%d,), }", descr, count), string(body)}
+	}
+	members := goodArchive()
+	members["shape"] = list("<i4", 2, int32s(int32(n), int32(n)))
+	members["data"] = list("<f8", len(values), float64s(values...))
+	members["indices"], members["indptr"] = list("<i4", len(indices), int32s(indices...)), list("<i4", len(starts), int32s(starts...))
+	return members
+}
+
+func BenchmarkWrite(b *testing.B) {
+	d := &Dense{Rows: 100000, Cols: 1, Values: make([]float64, 100000)}
+	rng := rand.New(rand.NewPCG(7, 7))
+	for k := range d.Values {
+		d.Values[k] = rng.NormFloat64()
+	}
+	for _, name := range []string{"x.mtx", "x.npy"} {
+		b.Run(name, func(b *testing.B) {
+			b.SetBytes(int64(8 * len(d.Values)))
+			for b.Loop() {
+				if err := WriteDense(filepath.Join(b.TempDir(), name), d, WriteOptions{}); err != nil {
+					b.Fatal(err)
+				}
+			}
+		})
+	}
+}

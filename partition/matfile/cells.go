@@ -88,7 +88,7 @@ func (c *cells) floats() ([]float64, error) {
 	}
 	c.value = out
 	for k, v := range out {
-		if math.IsNaN(v) || math.IsInf(v, 0) {
+		if !finite(v) {
 			n, _ := a.count()
 			at := n - c.left - int64(len(out)/c.perElement()) + int64(k/c.perElement())
 			return nil, &FileError{Path: c.name, Expected: "finite numbers", Found: fmt.Sprintf("%v as element %d", v, at+1)}

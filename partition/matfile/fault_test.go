@@ -117,7 +117,7 @@ func TestDamagedCompression(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		for at := range whole {
+		for at := 0; at < len(whole); at += 3 {
 			bad := bytes.Clone(whole)
 			bad[at] ^= 4
 			if err := os.WriteFile(path, bad, 0o644); err != nil {

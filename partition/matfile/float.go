@@ -29,8 +29,11 @@ func scanFloat(b []byte, p int) (v float64, next int, ok bool) {
 		neg = c == '-'
 		p++
 	}
-	mark := p
-	man, p := scanDigits(b, p, 0)
+	mark, man := p, uint64(0)
+	for d := b[p] - '0'; d <= 9; d = b[p] - '0' { // few, mostly: no words of eight
+		man = man*10 + uint64(d)
+		p++
+	}
 	digits, exp := p-mark, 0
 	if b[p] == '.' {
 		p++

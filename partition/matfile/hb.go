@@ -9,6 +9,9 @@ import (
 
 // openHB opens a Boeing file.
 func openHB(in *stream, purpose use) (*Reader, error) {
+	if err := in.mustReopen("Harwell-Boeing files"); err != nil {
+		return nil, err
+	}
 	f, err := readHBHeader(in)
 	if err != nil {
 		return nil, err

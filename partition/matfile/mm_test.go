@@ -149,6 +149,7 @@ func TestMatrixMarketRefusals(t *testing.T) {
 		"array too long":            {"%%MatrixMarket matrix array real general\n2 1\n1\n2\n\n3\n", "line 6: expected the end of the file after 2 numbers, found another number"},
 		"array text":                {"%%MatrixMarket matrix array real general\n2 1\n1\nx\n", `line 4: expected a finite number, found "x"`},
 		"complex array, one a line": {"%%MatrixMarket matrix array complex general\n1 1\n1\n2\n", "line 3: expected 2 numbers on the line, found 1"},
+		"sum of duplicates":         {coordinate + "2 2 2\n2 1 1e308\n2 1 1e308\n", "row 2: expected duplicates whose sum is finite"},
 		"UTF-16":                    {"\xff\xfe%\x00%\x00", "UTF-16 text"},
 		"byte order mark":           {"\xef\xbb\xbf" + coordinate + "1 1 1\n1 1 1\n", "byte order mark"},
 		"unknown":                   {"hello world\n", "expected a file that begins with %%MatrixMarket"},

@@ -141,7 +141,10 @@ func scatter(r *Reader, h Header) (*Dense, error) {
 	d := &Dense{Rows: h.Rows, Cols: h.Cols, Complex: h.Complex, Values: make([]float64, h.Rows*h.Cols)}
 	for _, t := range parts {
 		for k, v := range t.V {
-			d.Values[int(t.J[k])*d.Rows+int(t.I[k])] += v
+			at := int(t.J[k])*d.Rows + int(t.I[k])
+			if d.Values[at] += v; !finite(d.Values[at]) {
+				return nil, &FileError{Path: h.Path, Row: int(t.I[k]) + 1, Expected: "duplicates whose sum is finite", Found: "a sum beyond the range of numbers"}
+			}
 		}
 	}
 	return d, nil

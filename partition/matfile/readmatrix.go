@@ -3,6 +3,7 @@ package matfile
 import (
 	"fmt"
 	"io"
+	"math"
 
 	"rowstead/partition/csr"
 )
@@ -38,7 +39,11 @@ func ReadMatrix(path string, o Options) (*csr.Matrix, Header, error) {
 	if err := inProportion(r.head, entries); err != nil {
 		return nil, r.head, err
 	}
-	return assemble(r.head.Rows, r.head.Cols, parts, entries), r.head, nil
+	m, overflow := assemble(r.head.Rows, r.head.Cols, parts, entries)
+	if overflow > 0 {
+		return nil, r.head, &FileError{Path: path, Row: overflow, Expected: "duplicates whose sum is finite", Found: "a sum beyond the range of numbers"}
+	}
+	return m, r.head, nil
 }
 
 // A matrix may have emptyRows rows and rowsPerEntry more an entry; beyond that
@@ -56,9 +61,10 @@ func inProportion(h Header, entries int) error {
 }
 
 // assemble sorts the entries into rows by counting; parts are dropped as they
-// are used up.
-func assemble(rows, cols int, parts []csr.Triplets, entries int) *csr.Matrix {
-	m := &csr.Matrix{Rows: rows, Cols: cols, Start: make([]int, rows+1)}
+// are used up. overflow is the row, from one, of a sum of duplicates that is not
+// finite; 0 where there is none.
+func assemble(rows, cols int, parts []csr.Triplets, entries int) (m *csr.Matrix, overflow int) {
+	m = &csr.Matrix{Rows: rows, Cols: cols, Start: make([]int, rows+1)}
 	for _, t := range parts {
 		for _, i := range t.I {
 			m.Start[i+1]++
@@ -79,13 +85,12 @@ func assemble(rows, cols int, parts []csr.Triplets, entries int) *csr.Matrix {
 	}
 	copy(m.Start[1:], m.Start[:rows])
 	m.Start[0] = 0
-	sortRows(m)
-	return m
+	return m, sortRows(m)
 }
 
 // sortRows brings every row to ascending columns and sums duplicates in the
-// order in which they stand.
-func sortRows(m *csr.Matrix) {
+// order in which they stand. It returns what assemble calls overflow.
+func sortRows(m *csr.Matrix) (overflow int) {
 	i := 0
 	for i < m.Rows && ascending(m.Col[m.Start[i]:m.Start[i+1]]) {
 		i++
@@ -101,7 +106,9 @@ func sortRows(m *csr.Matrix) {
 		}
 		for k := range c {
 			if k > 0 && c[k] == c[k-1] {
-				m.Val[at-1] += v[k]
+				if m.Val[at-1] += v[k]; overflow == 0 && !finite(m.Val[at-1]) {
+					overflow = i + 1
+				}
 				continue
 			}
 			m.Col[at], m.Val[at] = c[k], v[k]
@@ -112,7 +119,10 @@ func sortRows(m *csr.Matrix) {
 	if at < len(m.Col) {
 		m.Col, m.Val = m.Col[:at:at], m.Val[:at:at]
 	}
+	return overflow
 }
+
+func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
 
 func ascending(c []int32) bool {
 	for k := 1; k < len(c); k++ {

@@ -22,6 +22,7 @@ type stream struct {
 	in          *bufio.Reader
 	compression string // "", "gzip", "zstd"
 	size        int64  // bytes of a plain regular file; −1 where they are not known
+	regular     bool   // can be opened again
 	inflater    interface{ Close() }
 }
 
@@ -41,7 +42,7 @@ func openStream(path string) (*stream, error) {
 		return nil, err
 	}
 	if stat.Mode().IsRegular() {
-		s.size = stat.Size()
+		s.size, s.regular = stat.Size(), true
 	}
 	if err := s.inflate(); err != nil {
 		s.close()
@@ -68,7 +69,7 @@ func (s *stream) inflate() error {
 			return s.readError(err, 0)
 		}
 		s.compression, s.size, s.in = "gzip", -1, bufio.NewReaderSize(z, 64<<10)
-	case bytes.Equal(magic, []byte{0x28, 0xb5, 0x2f, 0xfd}):
+	case isZstandard(magic):
 		z, err := zstd.NewReader(raw, zstd.WithDecoderConcurrency(1), zstd.WithDecoderLowmem(true), zstd.WithDecoderMaxWindow(largestWindow))
 		if err != nil {
 			return s.readError(err, 0)
@@ -84,6 +85,20 @@ func (s *stream) inflate() error {
 		}
 	}
 	return nil
+}
+
+// isZstandard knows a data frame and the skippable frames that some packers
+// put first. Source: RFC 8878, sections 3.1.1 and 3.1.2.
+func isZstandard(magic []byte) bool {
+	return bytes.Equal(magic, []byte{0x28, 0xb5, 0x2f, 0xfd}) || len(magic) == 4 && magic[0]&0xf0 == 0x50 && bytes.Equal(magic[1:], []byte{0x2a, 0x4d, 0x18})
+}
+
+// mustReopen refuses a pipe where a format takes more than one pass.
+func (s *stream) mustReopen(format string) error {
+	if s.regular {
+		return nil
+	}
+	return &FileError{Path: s.path, Expected: "a regular file, since " + format + " are read in several passes", Found: "a pipe or device"}
 }
 
 // bufferSize is most bytes, or what a small plain file needs.

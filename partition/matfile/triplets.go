@@ -45,6 +45,9 @@ func firstRow(in *stream) (lines, words int, err error) {
 			return lines, len(bytes.Fields(text)), nil
 		}
 		lines++
+		if hasPrefixFold(text, mmBanner) {
+			return 0, 0, &FileError{Path: in.path, Line: lines, Expected: mmBanner + " as the very first bytes of the file", Found: "it behind others"}
+		}
 	}
 }
 
@@ -59,6 +62,9 @@ func openList(in *stream, o Options, lines, words int) (*Reader, error) {
 // openTriplets reads the file once for its size and base and prepares the
 // second pass.
 func openTriplets(in *stream, o Options, values int, purpose use) (*Reader, error) {
+	if err := in.mustReopen("triplets without a header"); err != nil {
+		return nil, err
+	}
 	span, err := spanTriplets(in.path, o, values)
 	if err != nil {
 		return nil, err

@@ -45,6 +45,7 @@ func TestTripletRefusals(t *testing.T) {
 		"text":              {"0 0 1\n1 1 one\n", UnknownBase, `line 2, row 2: expected a finite number, found "one"`, ""},
 		"two words":         {"0 0\n", UnknownBase, "line 1: expected lines of row, column and value", ""},
 		"a short line":      {"0 0 1\n\n1 1\n", UnknownBase, "line 3, row 2: expected a row, a column and a value", ""},
+		"banner too late":   {"\n" + coordinate + "1 1 1\n1 1 1\n", OneBased, "line 2: expected %%MatrixMarket as the very first bytes", ""},
 		"comments alone":    {"# nothing\n", UnknownBase, "line 1: expected a line of numbers, found the end of the file", ""},
 		"few, far apart":    {"0 0 1\n2000000000 0 1\n", UnknownBase, "expected rows in proportion to 2 entries", ""},
 	} {

@@ -3,7 +3,6 @@ package matfile
 import (
 	"fmt"
 	"io"
-	"math"
 	"path/filepath"
 	"strconv"
 	"strings"
@@ -23,7 +22,7 @@ func WriteDense(path string, d *Dense, w WriteOptions) error {
 		panic("matfile: WriteDense: values do not fit rows and columns")
 	}
 	for k, v := range d.Values {
-		if math.IsNaN(v) || math.IsInf(v, 0) {
+		if !finite(v) {
 			return fmt.Errorf("write %s: row %d, column %d is %v, not a finite number", path, k%d.Rows+1, k/d.Rows+1, v)
 		}
 	}
@@ -118,7 +117,7 @@ func (s *entryWriter) put(i, j int, v float64) error {
 		return fmt.Errorf("entry (%d, %d) lies outside a %d by %d matrix", i+1, j+1, s.head.Rows, s.head.Cols)
 	case !lower:
 		return fmt.Errorf("entry (%d, %d) does not belong in a %s file", i+1, j+1, s.head.Symmetry)
-	case math.IsNaN(v) || math.IsInf(v, 0):
+	case !finite(v):
 		return fmt.Errorf("entry (%d, %d) is %v, not a finite number", i+1, j+1, v)
 	case s.count == s.head.Stored:
 		return fmt.Errorf("more entries are given than the %d announced", s.head.Stored)
