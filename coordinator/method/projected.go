@@ -107,12 +107,11 @@ func (p *projected) solveColumn(c column, next bool) {
 	if c.sketchW != nil {
 		p.qr.TransposeApply(c.sketchW, out)
 	} else {
-		coefficients := make([]float64, length)
-		copy(coefficients[d+c.lo:], c.h)
+		coefficients := append(make([]float64, 0, len(c.h)+1), c.h...)
 		if next {
-			coefficients[length-1] = c.norm
+			coefficients = append(coefficients, c.norm)
 		}
-		p.qr.R().Mul(out, coefficients)
+		p.qr.R().Combine(out, d+c.lo, coefficients)
 	}
 	p.ls.Append(out)
 	p.solved++

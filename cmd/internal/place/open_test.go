@@ -10,7 +10,6 @@ import (
 	"rowstead/coordinator"
 	"rowstead/coordinator/report"
 	"rowstead/partition/audit"
-	"rowstead/partition/csr"
 	"rowstead/partition/matfile"
 	"rowstead/partition/samples/problems"
 )
@@ -96,50 +95,4 @@ func solve(t *testing.T, matrix, right, kind string) *report.Record {
 		t.Errorf("verdict %s, the audit says met %v", rec.Verdict, check.Met)
 	}
 	return rec
-}
-
-// Five of them enlarged to a length for which sketching is meant: copies in a
-// row, each weakly tied to the next.
-func TestEnlargedMatrices(t *testing.T) {
-	if testing.Short() {
-		t.Skip("a minute")
-	}
-	for _, file := range []string{"utm300.mtx", "jagmesh7_lap.mtx", "bcsstk16.mtx.gz", "c9840.mtx.gz", "lund_a.mtx"} {
-		t.Run(file, func(t *testing.T) {
-			a, _, err := matfile.ReadMatrix(matrices+file, matfile.Options{})
-			if err != nil {
-				t.Fatal(err)
-			}
-			big := enlarged(a, (30000+a.Rows-1)/a.Rows)
-			path := filepath.Join(t.TempDir(), "a.mtx")
-			if err := matfile.WriteMatrix(path, big, matfile.WriteOptions{}); err != nil {
-				t.Fatal(err)
-			}
-			if rec := solve(t, path, rightSide(t, path), "sketched"); rec.Verdict != report.Met || rec.Rows < 30000 {
-				t.Errorf("verdict %s, %q on %d rows", rec.Verdict, rec.Reason, rec.Rows)
-			}
-		})
-	}
-}
-
-// enlarged is copies of a along the diagonal; unknown i of a copy is tied to
-// unknown i of the next by a thousandth of its diagonal.
-func enlarged(a *csr.Matrix, copies int) *csr.Matrix {
-	entries := &csr.Triplets{}
-	for c := range copies {
-		at := c * a.Rows
-		for i := range a.Rows {
-			cols, vals := a.Row(i)
-			for k, j := range cols {
-				entries.Add(at+i, at+int(j), vals[k])
-			}
-			if tie := 1e-3 * a.At(i, i); c+1 < copies {
-				entries.Add(at+i, at+i, tie)
-				entries.Add(at+i+a.Rows, at+i+a.Rows, tie)
-				entries.Add(at+i, at+i+a.Rows, -tie)
-				entries.Add(at+i+a.Rows, at+i, -tie)
-			}
-		}
-	}
-	return entries.Matrix(copies*a.Rows, copies*a.Rows)
 }

@@ -69,7 +69,8 @@ func equalBits(t *testing.T, got, want []seen) {
 
 // sameBits: ten runs of a scenario give the same bits.
 func (s suite) sameBits(t *testing.T) {
-	for name, c := range s.cases {
+	for _, name := range []string{"grid with bad rows", "irregular, diagonal, plain"} {
+		c := s.cases[name]
 		t.Run(name, func(t *testing.T) {
 			want := watch(t, s.space(t, c), method.Double)
 			for range 9 {
