@@ -64,8 +64,15 @@ func rightSide(t *testing.T, path string) string {
 	return out
 }
 
-// solve runs a job and checks its verdict by an audit.
 func solve(t *testing.T, matrix, right, kind string) *report.Record {
+	t.Helper()
+	rec, _ := solveTo(t, matrix, right, kind)
+	return rec
+}
+
+// solveTo runs a job, checks its verdict by an audit, and returns the path of
+// the answer too.
+func solveTo(t *testing.T, matrix, right, kind string) (*report.Record, string) {
 	t.Helper()
 	out := filepath.Join(t.TempDir(), "x.mtx")
 	rec := report.New("solve")
@@ -94,5 +101,5 @@ func solve(t *testing.T, matrix, right, kind string) *report.Record {
 	if check.Met != (rec.Verdict == report.Met) {
 		t.Errorf("verdict %s, the audit says met %v", rec.Verdict, check.Met)
 	}
-	return rec
+	return rec, answer
 }
