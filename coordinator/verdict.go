@@ -21,6 +21,10 @@ func (r *runner) check(ctx context.Context, last method.Result, side *report.Sid
 	side.Products++
 	side.Residuals = r.residuals(res)
 	side.Residuals.ConditionHint, side.Residuals.ForwardError = hint(last.ConditionHint), hint(last.ForwardError)
+	if last.Method == method.CG {
+		// Its hint comes from ‖x‖ and ‖b‖ alone: a true bound, and no estimate.
+		side.Residuals.ForwardError = report.Unknown()
+	}
 	side.Verdict, side.Reason = report.Short, last.Reason
 	if res.Met(r.job.Tolerance) {
 		side.Verdict, side.Reason = report.Met, ""

@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"io/fs"
 	"strings"
 
 	"github.com/spf13/pflag"
@@ -109,15 +108,4 @@ func expectation(kind string) string {
 		return "true or false"
 	}
 	return ""
-}
-
-// missingFile turns "no such file" into a fault of the input.
-func missingFile(path string, err error) error {
-	switch {
-	case errors.Is(err, fs.ErrNotExist):
-		return usage("%s: there is no such file", path)
-	case errors.Is(err, fs.ErrPermission):
-		return usage("%s: it may not be read", path)
-	}
-	return err
 }

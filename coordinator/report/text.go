@@ -76,8 +76,11 @@ func (r *Record) writeResiduals(b *strings.Builder) {
 // digits says how many digits of x the residual and the condition let expect.
 func (r *Record) digits() string {
 	x := r.Residuals
-	if !x.ForwardError.Finite() || x.ForwardError <= 0 || x.ConditionHint <= 0 {
+	if !x.ConditionHint.Finite() || x.ConditionHint <= 0 {
 		return "unknown (no estimate of the condition)"
+	}
+	if !x.ForwardError.Finite() || x.ForwardError <= 0 {
+		return fmt.Sprintf("unknown (all that is known: the condition is at least %s)", short(x.ConditionHint, 2))
 	}
 	condition := fmt.Sprintf("(condition at least %s)", short(x.ConditionHint, 2))
 	count := int(math.Floor(-math.Log10(float64(x.ForwardError))))

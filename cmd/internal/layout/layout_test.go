@@ -90,12 +90,12 @@ func TestTopLevel(t *testing.T) {
 	}
 }
 
-// tracked leaves out what a person builds or profiles there (.gitignore).
+// tracked leaves out what a person builds, profiles or solves there (.gitignore).
 func tracked(name string) bool {
 	if name == module {
 		return false
 	}
-	for _, pattern := range []string{"*.test", "*.prof", "*.out", "*.exe"} {
+	for _, pattern := range []string{"*.test", "*.prof", "*.out", "*.exe", "*.mtx"} {
 		if match, _ := path.Match(pattern, name); match {
 			return false
 		}
