@@ -81,39 +81,40 @@ func dot1[F Element](w []float64, c []F) float64 {
 	return sums[0]
 }
 
-// update4 sets w ← (((w − h₀c₀) − h₁c₁) − h₂c₂) − h₃c₃.
-func update4[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
+// update4 sets d ← (((w − h₀c₀) − h₁c₁) − h₂c₂) − h₃c₃; d may be w.
+func update4[F Element](d, w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
 	n := len(w)
+	d = d[:n]
 	c0, c1, c2, c3 = c0[:n], c1[:n], c2[:n], c3[:n]
 	switch {
 	case chosen == plain:
-		update4Go(w, h, c0, c1, c2, c3)
+		update4Go(d, w, h, c0, c1, c2, c3)
 	case chosen == avx512 && isDouble[F]():
-		update4AVX512(as64(w), h, as64(c0), as64(c1), as64(c2), as64(c3), n)
+		update4AVX512(as64(d), as64(w), h, as64(c0), as64(c1), as64(c2), as64(c3), n)
 	case chosen == avx512:
-		update4SingleAVX512(as64(w), h, as32(c0), as32(c1), as32(c2), as32(c3), n)
+		update4SingleAVX512(as64(d), as64(w), h, as32(c0), as32(c1), as32(c2), as32(c3), n)
 	case isDouble[F]():
-		update4AVX2(as64(w), h, as64(c0), as64(c1), as64(c2), as64(c3), n)
+		update4AVX2(as64(d), as64(w), h, as64(c0), as64(c1), as64(c2), as64(c3), n)
 	default:
-		update4SingleAVX2(as64(w), h, as32(c0), as32(c1), as32(c2), as32(c3), n)
+		update4SingleAVX2(as64(d), as64(w), h, as32(c0), as32(c1), as32(c2), as32(c3), n)
 	}
 }
 
-// update1 sets w ← w − factor·c.
-func update1[F Element](w []float64, factor float64, c []F) {
+// update1 sets d ← w − factor·c; d may be w.
+func update1[F Element](d, w []float64, factor float64, c []F) {
 	n, h := len(w), [1]float64{factor}
-	c = c[:n]
+	c, d = c[:n], d[:n]
 	switch {
 	case chosen == plain:
-		update1Go(w, factor, c)
+		update1Go(d, w, factor, c)
 	case chosen == avx512 && isDouble[F]():
-		update1AVX512(as64(w), &h, as64(c), n)
+		update1AVX512(as64(d), as64(w), &h, as64(c), n)
 	case chosen == avx512:
-		update1SingleAVX512(as64(w), &h, as32(c), n)
+		update1SingleAVX512(as64(d), as64(w), &h, as32(c), n)
 	case isDouble[F]():
-		update1AVX2(as64(w), &h, as64(c), n)
+		update1AVX2(as64(d), as64(w), &h, as64(c), n)
 	default:
-		update1SingleAVX2(as64(w), &h, as32(c), n)
+		update1SingleAVX2(as64(d), as64(w), &h, as32(c), n)
 	}
 }
 

@@ -53,9 +53,9 @@ func pathsAgree[F Element](t *rapid.T, use func(p path), p path) {
 // allLoops is what the inner loops make of copies of w.
 func allLoops[F Element](w []float64, cols [][]F, h []float64) map[string][]float64 {
 	dots := dot4(w, cols[0], cols[1], cols[2], cols[3])
-	four, one, tile := clone(w), clone(w), clone(w)
-	update4(four, (*[4]float64)(h), cols[0], cols[1], cols[2], cols[3])
-	update1(one, h[0], cols[2])
+	four, one, tile := clone(w), make([]float64, len(w)), clone(w)
+	update4(four, w, (*[4]float64)(h), cols[0], cols[1], cols[2], cols[3])
+	update1(one, w, h[0], cols[2])
 	b, stored := make([]F, len(w)), make([]float64, len(w))
 	scaleInto(b, tile, h[1])
 	Widen(stored, b)
@@ -82,8 +82,8 @@ func TestPathsKeepToTheirRows(t *testing.T) {
 func keepsToRows[F Element](t *testing.T, rng *rand.Rand, n int) {
 	w, c := vector(rng, n+9), columns[F](rng, n+9, 5)
 	beyond, beyondB := clone(w[n:]), append([]F(nil), c[4][n:]...)
-	update4(w[:n], &[4]float64{1, 2, 3, 4}, c[0], c[1], c[2], c[3])
-	update1(w[:n], 5, c[0])
+	update4(w[:n], w[:n], &[4]float64{1, 2, 3, 4}, c[0], c[1], c[2], c[3])
+	update1(w[:n], w[:n], 5, c[0])
 	scaleInto(c[4], w[:n], 6)
 	if !sameBits(w[n:], beyond) || fmt.Sprint(c[4][n:]) != fmt.Sprint(beyondB) {
 		t.Errorf("rows beyond %d were written", n)

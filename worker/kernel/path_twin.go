@@ -10,11 +10,11 @@ func dot4[F Element](w []float64, c0, c1, c2, c3 []F) [4]float64 {
 
 func dot1[F Element](w []float64, c []F) float64 { return dot1Go(w, c) }
 
-func update4[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
-	update4Go(w, h, c0, c1, c2, c3)
+func update4[F Element](d, w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
+	update4Go(d, w, h, c0, c1, c2, c3)
 }
 
-func update1[F Element](w []float64, h float64, c []F) { update1Go(w, h, c) }
+func update1[F Element](d, w []float64, h float64, c []F) { update1Go(d, w, h, c) }
 
 func scaleInto[F Element](b []F, tile []float64, factor float64) { scaleGo(b, tile, factor) }
 

@@ -8,7 +8,7 @@ func Update[F Element](w []float64, cols [][]F, h []float64, r Range) {
 	}
 	for r.Lo < r.Hi {
 		t := r.next(Tile)
-		updateTile(w[t.Lo:t.Hi], cols, h, t.Lo)
+		updateTile(w[t.Lo:t.Hi], w[t.Lo:t.Hi], cols, h, t.Lo)
 	}
 }
 
@@ -26,10 +26,10 @@ func Correct[F Element](d []float64, cols [][]F, y []float64, r Range) {
 			c := cols[j : j+4 : j+4]
 			// d − (−y)·b has the bits of d + y·b.
 			g := [4]float64{-y[j], -y[j+1], -y[j+2], -y[j+3]}
-			update4(tile, &g, c[0][t.Lo:t.Hi], c[1][t.Lo:t.Hi], c[2][t.Lo:t.Hi], c[3][t.Lo:t.Hi])
+			update4(tile, tile, &g, c[0][t.Lo:t.Hi], c[1][t.Lo:t.Hi], c[2][t.Lo:t.Hi], c[3][t.Lo:t.Hi])
 		}
 		for ; j < len(cols); j++ {
-			update1(tile, -y[j], cols[j][t.Lo:t.Hi])
+			update1(tile, tile, -y[j], cols[j][t.Lo:t.Hi])
 		}
 	}
 }
@@ -47,7 +47,7 @@ func Reduce[F Element](out, w []float64, cols [][]F, h []float64, r Range) {
 	for r.Lo < r.Hi {
 		t := r.next(Tile)
 		tile := w[t.Lo:t.Hi]
-		updateTile(tile, cols, h, t.Lo)
+		updateTile(tile, tile, cols, h, t.Lo)
 		dotsTile(out, tile, cols, t.Lo)
 		out[len(cols)] += dot1(tile, tile)
 	}
@@ -77,8 +77,7 @@ func (n *Next[F]) Form(gram []float64, r Range) {
 	for r.Lo < r.Hi {
 		t := r.next(Tile)
 		tile := scratch[:t.Len()]
-		copy(tile, n.W[t.Lo:t.Hi])
-		updateTile(tile, n.Cols, n.H, t.Lo)
+		updateTile(tile, n.W[t.Lo:t.Hi], n.Cols, n.H, t.Lo)
 		scaleInto(n.B[t.Lo:t.Hi], tile, scale)
 		dotsTile(gram, tile, n.Window, t.Lo)
 		gram[len(n.Window)] += dot1(tile, tile)
@@ -94,37 +93,44 @@ func scaleGo[F Element](b []F, tile []float64, factor float64) {
 	}
 }
 
-// updateTile sets w ← w − Σ_j h[j]·cols[j][first:first+len(w)], one tile or less.
-func updateTile[F Element](w []float64, cols [][]F, h []float64, first int) {
+// updateTile sets d ← w − Σ_j h[j]·cols[j][first:first+len(w)], one tile or less;
+// d may be w.
+func updateTile[F Element](d, w []float64, cols [][]F, h []float64, first int) {
 	last := first + len(w)
+	if len(cols) == 0 {
+		copy(d, w)
+	}
 	j := 0
 	for ; j+4 <= len(cols); j += 4 {
 		c := cols[j : j+4 : j+4]
-		update4(w, (*[4]float64)(h[j:]), c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last])
+		update4(d, w, (*[4]float64)(h[j:]), c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last])
+		w = d
 	}
 	for ; j < len(cols); j++ {
-		update1(w, h[j], cols[j][first:last])
+		update1(d, w, h[j], cols[j][first:last])
+		w = d
 	}
 }
 
-// update4Go is update4 in plain Go: w ← (((w − h₀c₀) − h₁c₁) − h₂c₂) − h₃c₃.
-func update4Go[F Element](w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
+// update4Go is update4 in plain Go: d ← (((w − h₀c₀) − h₁c₁) − h₂c₂) − h₃c₃.
+func update4Go[F Element](d, w []float64, h *[4]float64, c0, c1, c2, c3 []F) {
 	h0, h1, h2, h3 := h[0], h[1], h[2], h[3]
 	c0, c1, c2, c3 = c0[:len(w)], c1[:len(w)], c2[:len(w)], c3[:len(w)]
+	d = d[:len(w)]
 	for i, v := range w {
 		v -= float64(h0 * float64(c0[i]))
 		v -= float64(h1 * float64(c1[i]))
 		v -= float64(h2 * float64(c2[i]))
 		v -= float64(h3 * float64(c3[i]))
-		w[i] = v
+		d[i] = v
 	}
 }
 
-// update1Go is update1 in plain Go: w ← w − h·c.
-func update1Go[F Element](w []float64, h float64, c []F) {
-	c = c[:len(w)]
+// update1Go is update1 in plain Go: d ← w − h·c.
+func update1Go[F Element](d, w []float64, h float64, c []F) {
+	c, d = c[:len(w)], d[:len(w)]
 	for i, v := range w {
-		w[i] = v - float64(h*float64(c[i]))
+		d[i] = v - float64(h*float64(c[i]))
 	}
 }
 

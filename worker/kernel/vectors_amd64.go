@@ -9,20 +9,20 @@ package kernel
 //go:noescape
 func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
 
-// update4AVX2 subtracts h[j] times column j from w over n rows.
+// update4AVX2 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update4AVX2(w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+func update4AVX2(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
 
 // dot1AVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
 func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int)
 
-// update1AVX2 subtracts h[j] times column j from w over n rows.
+// update1AVX2 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update1AVX2(w *float64, h *[1]float64, c0 *float64, n int)
+func update1AVX2(d *float64, w *float64, h *[1]float64, c0 *float64, n int)
 
 // scaleAVX2 sets b to tile times factor and tile to b, as stored, over n rows.
 //
@@ -34,20 +34,20 @@ func scaleAVX2(b *float64, tile *float64, factor *float64, n int)
 //go:noescape
 func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
 
-// update4SingleAVX2 subtracts h[j] times column j from w over n rows.
+// update4SingleAVX2 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update4SingleAVX2(w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+func update4SingleAVX2(d *float64, w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
 
 // dot1SingleAVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
 func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int)
 
-// update1SingleAVX2 subtracts h[j] times column j from w over n rows.
+// update1SingleAVX2 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update1SingleAVX2(w *float64, h *[1]float64, c0 *float32, n int)
+func update1SingleAVX2(d *float64, w *float64, h *[1]float64, c0 *float32, n int)
 
 // scaleSingleAVX2 sets b to tile times factor and tile to b, as stored, over n rows.
 //
@@ -59,20 +59,20 @@ func scaleSingleAVX2(b *float32, tile *float64, factor *float64, n int)
 //go:noescape
 func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
 
-// update4AVX512 subtracts h[j] times column j from w over n rows.
+// update4AVX512 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update4AVX512(w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+func update4AVX512(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
 
 // dot1AVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
 func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int)
 
-// update1AVX512 subtracts h[j] times column j from w over n rows.
+// update1AVX512 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update1AVX512(w *float64, h *[1]float64, c0 *float64, n int)
+func update1AVX512(d *float64, w *float64, h *[1]float64, c0 *float64, n int)
 
 // scaleAVX512 sets b to tile times factor and tile to b, as stored, over n rows.
 //
@@ -84,20 +84,20 @@ func scaleAVX512(b *float64, tile *float64, factor *float64, n int)
 //go:noescape
 func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
 
-// update4SingleAVX512 subtracts h[j] times column j from w over n rows.
+// update4SingleAVX512 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update4SingleAVX512(w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+func update4SingleAVX512(d *float64, w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
 
 // dot1SingleAVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
 func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int)
 
-// update1SingleAVX512 subtracts h[j] times column j from w over n rows.
+// update1SingleAVX512 sets d to w less h[j] times column j over n rows.
 //
 //go:noescape
-func update1SingleAVX512(w *float64, h *[1]float64, c0 *float32, n int)
+func update1SingleAVX512(d *float64, w *float64, h *[1]float64, c0 *float32, n int)
 
 // scaleSingleAVX512 sets b to tile times factor and tile to b, as stored, over n rows.
 //

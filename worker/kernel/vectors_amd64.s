@@ -41,7 +41,7 @@ DATA mask32<>+60(SB)/4, $0x00000000
 GLOBL mask32<>(SB), RODATA|NOPTR, $64
 
 // func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·dot4AVX2(SB), NOSPLIT, $0-56
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -63,35 +63,39 @@ TEXT ·dot4AVX2(SB), NOSPLIT, $0-56
 	JEQ    dot4AVX2_rest
 
 dot4AVX2_eight:
-	VMOVUPD (AX)(R9*8), Y8
-	VMOVUPD 32(AX)(R9*8), Y9
-	VMOVUPD (CX)(R9*8), Y10
-	VMOVUPD 32(CX)(R9*8), Y11
-	VMULPD  Y8, Y10, Y10
-	VADDPD  Y10, Y0, Y0
-	VMULPD  Y9, Y11, Y11
-	VADDPD  Y11, Y1, Y1
-	VMOVUPD (DX)(R9*8), Y10
-	VMOVUPD 32(DX)(R9*8), Y11
-	VMULPD  Y8, Y10, Y10
-	VADDPD  Y10, Y2, Y2
-	VMULPD  Y9, Y11, Y11
-	VADDPD  Y11, Y3, Y3
-	VMOVUPD (BX)(R9*8), Y10
-	VMOVUPD 32(BX)(R9*8), Y11
-	VMULPD  Y8, Y10, Y10
-	VADDPD  Y10, Y4, Y4
-	VMULPD  Y9, Y11, Y11
-	VADDPD  Y11, Y5, Y5
-	VMOVUPD (SI)(R9*8), Y10
-	VMOVUPD 32(SI)(R9*8), Y11
-	VMULPD  Y8, Y10, Y10
-	VADDPD  Y10, Y6, Y6
-	VMULPD  Y9, Y11, Y11
-	VADDPD  Y11, Y7, Y7
-	ADDQ    $0x08, R9
-	CMPQ    R9, R8
-	JLT     dot4AVX2_eight
+	VMOVUPD    (AX)(R9*8), Y8
+	VMOVUPD    32(AX)(R9*8), Y9
+	PREFETCHT0 1024(CX)(R9*8)
+	VMOVUPD    (CX)(R9*8), Y10
+	VMOVUPD    32(CX)(R9*8), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y0, Y0
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y1, Y1
+	PREFETCHT0 1024(DX)(R9*8)
+	VMOVUPD    (DX)(R9*8), Y10
+	VMOVUPD    32(DX)(R9*8), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y2, Y2
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y3, Y3
+	PREFETCHT0 1024(BX)(R9*8)
+	VMOVUPD    (BX)(R9*8), Y10
+	VMOVUPD    32(BX)(R9*8), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y4, Y4
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y5, Y5
+	PREFETCHT0 1024(SI)(R9*8)
+	VMOVUPD    (SI)(R9*8), Y10
+	VMOVUPD    32(SI)(R9*8), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y6, Y6
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y7, Y7
+	ADDQ       $0x08, R9
+	CMPQ       R9, R8
+	JLT        dot4AVX2_eight
 
 dot4AVX2_rest:
 	SUBQ       R9, DI
@@ -103,6 +107,7 @@ dot4AVX2_rest:
 	VMASKMOVPD (AX)(R9*8), Y8, Y8
 	VMOVUPD    32(R8)(DI*8), Y9
 	VMASKMOVPD 32(AX)(R9*8), Y9, Y9
+	PREFETCHT0 1024(CX)(R9*8)
 	VMOVUPD    (R8)(DI*8), Y10
 	VMASKMOVPD (CX)(R9*8), Y10, Y10
 	VMOVUPD    32(R8)(DI*8), Y11
@@ -111,6 +116,7 @@ dot4AVX2_rest:
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
+	PREFETCHT0 1024(DX)(R9*8)
 	VMOVUPD    (R8)(DI*8), Y10
 	VMASKMOVPD (DX)(R9*8), Y10, Y10
 	VMOVUPD    32(R8)(DI*8), Y11
@@ -119,6 +125,7 @@ dot4AVX2_rest:
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
+	PREFETCHT0 1024(BX)(R9*8)
 	VMOVUPD    (R8)(DI*8), Y10
 	VMASKMOVPD (BX)(R9*8), Y10, Y10
 	VMOVUPD    32(R8)(DI*8), Y11
@@ -127,6 +134,7 @@ dot4AVX2_rest:
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
+	PREFETCHT0 1024(SI)(R9*8)
 	VMOVUPD    (R8)(DI*8), Y10
 	VMASKMOVPD (SI)(R9*8), Y10, Y10
 	VMOVUPD    32(R8)(DI*8), Y11
@@ -165,111 +173,122 @@ dot4AVX2_end:
 	VZEROUPPER
 	RET
 
-// func update4AVX2(w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
-// Requires: AVX
-TEXT ·update4AVX2(SB), NOSPLIT, $0-56
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         c1+24(FP), DX
-	MOVQ         c2+32(FP), BX
-	MOVQ         c3+40(FP), SI
-	MOVQ         n+48(FP), DI
-	MOVQ         h+8(FP), R8
-	VBROADCASTSD (R8), Y0
-	VBROADCASTSD 8(R8), Y1
-	VBROADCASTSD 16(R8), Y2
-	VBROADCASTSD 24(R8), Y3
-	XORQ         R9, R9
-	MOVQ         DI, R8
-	ANDQ         $-8, R8
+// func update4AVX2(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+// Requires: AVX, MMX+
+TEXT ·update4AVX2(SB), NOSPLIT, $0-64
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         c1+32(FP), BX
+	MOVQ         c2+40(FP), SI
+	MOVQ         c3+48(FP), DI
+	MOVQ         n+56(FP), R8
+	MOVQ         h+16(FP), R9
+	VBROADCASTSD (R9), Y0
+	VBROADCASTSD 8(R9), Y1
+	VBROADCASTSD 16(R9), Y2
+	VBROADCASTSD 24(R9), Y3
+	XORQ         R10, R10
+	MOVQ         R8, R9
+	ANDQ         $-8, R9
 	JEQ          update4AVX2_rest
 
 update4AVX2_eight:
-	VMOVUPD (AX)(R9*8), Y4
-	VMOVUPD 32(AX)(R9*8), Y5
-	VMOVUPD (CX)(R9*8), Y6
-	VMOVUPD 32(CX)(R9*8), Y7
-	VMULPD  Y0, Y6, Y6
-	VSUBPD  Y6, Y4, Y4
-	VMULPD  Y0, Y7, Y7
-	VSUBPD  Y7, Y5, Y5
-	VMOVUPD (DX)(R9*8), Y6
-	VMOVUPD 32(DX)(R9*8), Y7
-	VMULPD  Y1, Y6, Y6
-	VSUBPD  Y6, Y4, Y4
-	VMULPD  Y1, Y7, Y7
-	VSUBPD  Y7, Y5, Y5
-	VMOVUPD (BX)(R9*8), Y6
-	VMOVUPD 32(BX)(R9*8), Y7
-	VMULPD  Y2, Y6, Y6
-	VSUBPD  Y6, Y4, Y4
-	VMULPD  Y2, Y7, Y7
-	VSUBPD  Y7, Y5, Y5
-	VMOVUPD (SI)(R9*8), Y6
-	VMOVUPD 32(SI)(R9*8), Y7
-	VMULPD  Y3, Y6, Y6
-	VSUBPD  Y6, Y4, Y4
-	VMULPD  Y3, Y7, Y7
-	VSUBPD  Y7, Y5, Y5
-	VMOVUPD Y4, (AX)(R9*8)
-	VMOVUPD Y5, 32(AX)(R9*8)
-	ADDQ    $0x08, R9
-	CMPQ    R9, R8
-	JLT     update4AVX2_eight
-
-update4AVX2_rest:
-	SUBQ       R9, DI
-	JEQ        update4AVX2_end
-	NEGQ       DI
-	LEAQ       mask64<>+64(SB), R8
-	LEAQ       mask32<>+32(SB), R10
-	VMOVUPD    (R8)(DI*8), Y4
-	VMASKMOVPD (AX)(R9*8), Y4, Y4
-	VMOVUPD    32(R8)(DI*8), Y5
-	VMASKMOVPD 32(AX)(R9*8), Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y6
-	VMASKMOVPD (CX)(R9*8), Y6, Y6
-	VMOVUPD    32(R8)(DI*8), Y7
-	VMASKMOVPD 32(CX)(R9*8), Y7, Y7
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (CX)(R10*8), Y4
+	VMOVUPD    32(CX)(R10*8), Y5
+	PREFETCHT0 1024(DX)(R10*8)
+	VMOVUPD    (DX)(R10*8), Y6
+	VMOVUPD    32(DX)(R10*8), Y7
 	VMULPD     Y0, Y6, Y6
 	VSUBPD     Y6, Y4, Y4
 	VMULPD     Y0, Y7, Y7
 	VSUBPD     Y7, Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y0
-	VMASKMOVPD (DX)(R9*8), Y0, Y0
-	VMOVUPD    32(R8)(DI*8), Y6
-	VMASKMOVPD 32(DX)(R9*8), Y6, Y6
+	PREFETCHT0 1024(BX)(R10*8)
+	VMOVUPD    (BX)(R10*8), Y6
+	VMOVUPD    32(BX)(R10*8), Y7
+	VMULPD     Y1, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y1, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(SI)(R10*8)
+	VMOVUPD    (SI)(R10*8), Y6
+	VMOVUPD    32(SI)(R10*8), Y7
+	VMULPD     Y2, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y2, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(DI)(R10*8)
+	VMOVUPD    (DI)(R10*8), Y6
+	VMOVUPD    32(DI)(R10*8), Y7
+	VMULPD     Y3, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y3, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	VMOVUPD    Y4, (AX)(R10*8)
+	VMOVUPD    Y5, 32(AX)(R10*8)
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
+	JLT        update4AVX2_eight
+
+update4AVX2_rest:
+	SUBQ       R10, R8
+	JEQ        update4AVX2_end
+	NEGQ       R8
+	LEAQ       mask64<>+64(SB), R9
+	LEAQ       mask32<>+32(SB), R11
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y4
+	VMASKMOVPD (CX)(R10*8), Y4, Y4
+	VMOVUPD    32(R9)(R8*8), Y5
+	VMASKMOVPD 32(CX)(R10*8), Y5, Y5
+	PREFETCHT0 1024(DX)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y6
+	VMASKMOVPD (DX)(R10*8), Y6, Y6
+	VMOVUPD    32(R9)(R8*8), Y7
+	VMASKMOVPD 32(DX)(R10*8), Y7, Y7
+	VMULPD     Y0, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y0, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(BX)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y0
+	VMASKMOVPD (BX)(R10*8), Y0, Y0
+	VMOVUPD    32(R9)(R8*8), Y6
+	VMASKMOVPD 32(BX)(R10*8), Y6, Y6
 	VMULPD     Y1, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y1, Y6, Y6
 	VSUBPD     Y6, Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y0
-	VMASKMOVPD (BX)(R9*8), Y0, Y0
-	VMOVUPD    32(R8)(DI*8), Y1
-	VMASKMOVPD 32(BX)(R9*8), Y1, Y1
+	PREFETCHT0 1024(SI)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y0
+	VMASKMOVPD (SI)(R10*8), Y0, Y0
+	VMOVUPD    32(R9)(R8*8), Y1
+	VMASKMOVPD 32(SI)(R10*8), Y1, Y1
 	VMULPD     Y2, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y2, Y1, Y1
 	VSUBPD     Y1, Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y0
-	VMASKMOVPD (SI)(R9*8), Y0, Y0
-	VMOVUPD    32(R8)(DI*8), Y1
-	VMASKMOVPD 32(SI)(R9*8), Y1, Y1
+	PREFETCHT0 1024(DI)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y0
+	VMASKMOVPD (DI)(R10*8), Y0, Y0
+	VMOVUPD    32(R9)(R8*8), Y1
+	VMASKMOVPD 32(DI)(R10*8), Y1, Y1
 	VMULPD     Y3, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y3, Y1, Y1
 	VSUBPD     Y1, Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y0
-	VMASKMOVPD Y4, Y0, (AX)(R9*8)
-	VMOVUPD    32(R8)(DI*8), Y0
-	VMASKMOVPD Y5, Y0, 32(AX)(R9*8)
+	VMOVUPD    (R9)(R8*8), Y0
+	VMASKMOVPD Y4, Y0, (AX)(R10*8)
+	VMOVUPD    32(R9)(R8*8), Y0
+	VMASKMOVPD Y5, Y0, 32(AX)(R10*8)
 
 update4AVX2_end:
 	VZEROUPPER
 	RET
 
 // func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·dot1AVX2(SB), NOSPLIT, $0-32
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -282,17 +301,18 @@ TEXT ·dot1AVX2(SB), NOSPLIT, $0-32
 	JEQ    dot1AVX2_rest
 
 dot1AVX2_eight:
-	VMOVUPD (AX)(SI*8), Y2
-	VMOVUPD 32(AX)(SI*8), Y3
-	VMOVUPD (CX)(SI*8), Y4
-	VMOVUPD 32(CX)(SI*8), Y5
-	VMULPD  Y2, Y4, Y4
-	VADDPD  Y4, Y0, Y0
-	VMULPD  Y3, Y5, Y5
-	VADDPD  Y5, Y1, Y1
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     dot1AVX2_eight
+	VMOVUPD    (AX)(SI*8), Y2
+	VMOVUPD    32(AX)(SI*8), Y3
+	PREFETCHT0 1024(CX)(SI*8)
+	VMOVUPD    (CX)(SI*8), Y4
+	VMOVUPD    32(CX)(SI*8), Y5
+	VMULPD     Y2, Y4, Y4
+	VADDPD     Y4, Y0, Y0
+	VMULPD     Y3, Y5, Y5
+	VADDPD     Y5, Y1, Y1
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        dot1AVX2_eight
 
 dot1AVX2_rest:
 	SUBQ       SI, DX
@@ -304,6 +324,7 @@ dot1AVX2_rest:
 	VMASKMOVPD (AX)(SI*8), Y2, Y2
 	VMOVUPD    32(BX)(DX*8), Y3
 	VMASKMOVPD 32(AX)(SI*8), Y3, Y3
+	PREFETCHT0 1024(CX)(SI*8)
 	VMOVUPD    (BX)(DX*8), Y4
 	VMASKMOVPD (CX)(SI*8), Y4, Y4
 	VMOVUPD    32(BX)(DX*8), Y5
@@ -324,56 +345,61 @@ dot1AVX2_end:
 	VZEROUPPER
 	RET
 
-// func update1AVX2(w *float64, h *[1]float64, c0 *float64, n int)
-// Requires: AVX
-TEXT ·update1AVX2(SB), NOSPLIT, $0-32
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         n+24(FP), DX
-	MOVQ         h+8(FP), BX
-	VBROADCASTSD (BX), Y0
-	XORQ         SI, SI
-	MOVQ         DX, BX
-	ANDQ         $-8, BX
+// func update1AVX2(d *float64, w *float64, h *[1]float64, c0 *float64, n int)
+// Requires: AVX, MMX+
+TEXT ·update1AVX2(SB), NOSPLIT, $0-40
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         n+32(FP), BX
+	MOVQ         h+16(FP), SI
+	VBROADCASTSD (SI), Y0
+	XORQ         DI, DI
+	MOVQ         BX, SI
+	ANDQ         $-8, SI
 	JEQ          update1AVX2_rest
 
 update1AVX2_eight:
-	VMOVUPD (AX)(SI*8), Y1
-	VMOVUPD 32(AX)(SI*8), Y2
-	VMOVUPD (CX)(SI*8), Y3
-	VMOVUPD 32(CX)(SI*8), Y4
-	VMULPD  Y0, Y3, Y3
-	VSUBPD  Y3, Y1, Y1
-	VMULPD  Y0, Y4, Y4
-	VSUBPD  Y4, Y2, Y2
-	VMOVUPD Y1, (AX)(SI*8)
-	VMOVUPD Y2, 32(AX)(SI*8)
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     update1AVX2_eight
-
-update1AVX2_rest:
-	SUBQ       SI, DX
-	JEQ        update1AVX2_end
-	NEGQ       DX
-	LEAQ       mask64<>+64(SB), BX
-	LEAQ       mask32<>+32(SB), DI
-	VMOVUPD    (BX)(DX*8), Y1
-	VMASKMOVPD (AX)(SI*8), Y1, Y1
-	VMOVUPD    32(BX)(DX*8), Y2
-	VMASKMOVPD 32(AX)(SI*8), Y2, Y2
-	VMOVUPD    (BX)(DX*8), Y3
-	VMASKMOVPD (CX)(SI*8), Y3, Y3
-	VMOVUPD    32(BX)(DX*8), Y4
-	VMASKMOVPD 32(CX)(SI*8), Y4, Y4
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (CX)(DI*8), Y1
+	VMOVUPD    32(CX)(DI*8), Y2
+	PREFETCHT0 1024(DX)(DI*8)
+	VMOVUPD    (DX)(DI*8), Y3
+	VMOVUPD    32(DX)(DI*8), Y4
 	VMULPD     Y0, Y3, Y3
 	VSUBPD     Y3, Y1, Y1
 	VMULPD     Y0, Y4, Y4
 	VSUBPD     Y4, Y2, Y2
-	VMOVUPD    (BX)(DX*8), Y0
-	VMASKMOVPD Y1, Y0, (AX)(SI*8)
-	VMOVUPD    32(BX)(DX*8), Y0
-	VMASKMOVPD Y2, Y0, 32(AX)(SI*8)
+	VMOVUPD    Y1, (AX)(DI*8)
+	VMOVUPD    Y2, 32(AX)(DI*8)
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
+	JLT        update1AVX2_eight
+
+update1AVX2_rest:
+	SUBQ       DI, BX
+	JEQ        update1AVX2_end
+	NEGQ       BX
+	LEAQ       mask64<>+64(SB), SI
+	LEAQ       mask32<>+32(SB), R8
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (SI)(BX*8), Y1
+	VMASKMOVPD (CX)(DI*8), Y1, Y1
+	VMOVUPD    32(SI)(BX*8), Y2
+	VMASKMOVPD 32(CX)(DI*8), Y2, Y2
+	PREFETCHT0 1024(DX)(DI*8)
+	VMOVUPD    (SI)(BX*8), Y3
+	VMASKMOVPD (DX)(DI*8), Y3, Y3
+	VMOVUPD    32(SI)(BX*8), Y4
+	VMASKMOVPD 32(DX)(DI*8), Y4, Y4
+	VMULPD     Y0, Y3, Y3
+	VSUBPD     Y3, Y1, Y1
+	VMULPD     Y0, Y4, Y4
+	VSUBPD     Y4, Y2, Y2
+	VMOVUPD    (SI)(BX*8), Y0
+	VMASKMOVPD Y1, Y0, (AX)(DI*8)
+	VMOVUPD    32(SI)(BX*8), Y0
+	VMASKMOVPD Y2, Y0, 32(AX)(DI*8)
 
 update1AVX2_end:
 	VZEROUPPER
@@ -431,7 +457,7 @@ scaleAVX2_end:
 	RET
 
 // func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·dot4SingleAVX2(SB), NOSPLIT, $0-56
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -453,35 +479,39 @@ TEXT ·dot4SingleAVX2(SB), NOSPLIT, $0-56
 	JEQ    dot4SingleAVX2_rest
 
 dot4SingleAVX2_eight:
-	VMOVUPD   (AX)(R9*8), Y8
-	VMOVUPD   32(AX)(R9*8), Y9
-	VCVTPS2PD (CX)(R9*4), Y10
-	VCVTPS2PD 16(CX)(R9*4), Y11
-	VMULPD    Y8, Y10, Y10
-	VADDPD    Y10, Y0, Y0
-	VMULPD    Y9, Y11, Y11
-	VADDPD    Y11, Y1, Y1
-	VCVTPS2PD (DX)(R9*4), Y10
-	VCVTPS2PD 16(DX)(R9*4), Y11
-	VMULPD    Y8, Y10, Y10
-	VADDPD    Y10, Y2, Y2
-	VMULPD    Y9, Y11, Y11
-	VADDPD    Y11, Y3, Y3
-	VCVTPS2PD (BX)(R9*4), Y10
-	VCVTPS2PD 16(BX)(R9*4), Y11
-	VMULPD    Y8, Y10, Y10
-	VADDPD    Y10, Y4, Y4
-	VMULPD    Y9, Y11, Y11
-	VADDPD    Y11, Y5, Y5
-	VCVTPS2PD (SI)(R9*4), Y10
-	VCVTPS2PD 16(SI)(R9*4), Y11
-	VMULPD    Y8, Y10, Y10
-	VADDPD    Y10, Y6, Y6
-	VMULPD    Y9, Y11, Y11
-	VADDPD    Y11, Y7, Y7
-	ADDQ      $0x08, R9
-	CMPQ      R9, R8
-	JLT       dot4SingleAVX2_eight
+	VMOVUPD    (AX)(R9*8), Y8
+	VMOVUPD    32(AX)(R9*8), Y9
+	PREFETCHT0 1024(CX)(R9*4)
+	VCVTPS2PD  (CX)(R9*4), Y10
+	VCVTPS2PD  16(CX)(R9*4), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y0, Y0
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y1, Y1
+	PREFETCHT0 1024(DX)(R9*4)
+	VCVTPS2PD  (DX)(R9*4), Y10
+	VCVTPS2PD  16(DX)(R9*4), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y2, Y2
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y3, Y3
+	PREFETCHT0 1024(BX)(R9*4)
+	VCVTPS2PD  (BX)(R9*4), Y10
+	VCVTPS2PD  16(BX)(R9*4), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y4, Y4
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y5, Y5
+	PREFETCHT0 1024(SI)(R9*4)
+	VCVTPS2PD  (SI)(R9*4), Y10
+	VCVTPS2PD  16(SI)(R9*4), Y11
+	VMULPD     Y8, Y10, Y10
+	VADDPD     Y10, Y6, Y6
+	VMULPD     Y9, Y11, Y11
+	VADDPD     Y11, Y7, Y7
+	ADDQ       $0x08, R9
+	CMPQ       R9, R8
+	JLT        dot4SingleAVX2_eight
 
 dot4SingleAVX2_rest:
 	SUBQ       R9, DI
@@ -493,6 +523,7 @@ dot4SingleAVX2_rest:
 	VMASKMOVPD (AX)(R9*8), Y8, Y8
 	VMOVUPD    32(R8)(DI*8), Y9
 	VMASKMOVPD 32(AX)(R9*8), Y9, Y9
+	PREFETCHT0 1024(CX)(R9*4)
 	VMOVUPS    (R10)(DI*4), X10
 	VMASKMOVPS (CX)(R9*4), X10, X10
 	VCVTPS2PD  X10, Y10
@@ -503,6 +534,7 @@ dot4SingleAVX2_rest:
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
+	PREFETCHT0 1024(DX)(R9*4)
 	VMOVUPS    (R10)(DI*4), X10
 	VMASKMOVPS (DX)(R9*4), X10, X10
 	VCVTPS2PD  X10, Y10
@@ -513,6 +545,7 @@ dot4SingleAVX2_rest:
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
+	PREFETCHT0 1024(BX)(R9*4)
 	VMOVUPS    (R10)(DI*4), X10
 	VMASKMOVPS (BX)(R9*4), X10, X10
 	VCVTPS2PD  X10, Y10
@@ -523,6 +556,7 @@ dot4SingleAVX2_rest:
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
+	PREFETCHT0 1024(SI)(R9*4)
 	VMOVUPS    (R10)(DI*4), X10
 	VMASKMOVPS (SI)(R9*4), X10, X10
 	VCVTPS2PD  X10, Y10
@@ -563,119 +597,130 @@ dot4SingleAVX2_end:
 	VZEROUPPER
 	RET
 
-// func update4SingleAVX2(w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
-// Requires: AVX
-TEXT ·update4SingleAVX2(SB), NOSPLIT, $0-56
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         c1+24(FP), DX
-	MOVQ         c2+32(FP), BX
-	MOVQ         c3+40(FP), SI
-	MOVQ         n+48(FP), DI
-	MOVQ         h+8(FP), R8
-	VBROADCASTSD (R8), Y0
-	VBROADCASTSD 8(R8), Y1
-	VBROADCASTSD 16(R8), Y2
-	VBROADCASTSD 24(R8), Y3
-	XORQ         R9, R9
-	MOVQ         DI, R8
-	ANDQ         $-8, R8
+// func update4SingleAVX2(d *float64, w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+// Requires: AVX, MMX+
+TEXT ·update4SingleAVX2(SB), NOSPLIT, $0-64
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         c1+32(FP), BX
+	MOVQ         c2+40(FP), SI
+	MOVQ         c3+48(FP), DI
+	MOVQ         n+56(FP), R8
+	MOVQ         h+16(FP), R9
+	VBROADCASTSD (R9), Y0
+	VBROADCASTSD 8(R9), Y1
+	VBROADCASTSD 16(R9), Y2
+	VBROADCASTSD 24(R9), Y3
+	XORQ         R10, R10
+	MOVQ         R8, R9
+	ANDQ         $-8, R9
 	JEQ          update4SingleAVX2_rest
 
 update4SingleAVX2_eight:
-	VMOVUPD   (AX)(R9*8), Y4
-	VMOVUPD   32(AX)(R9*8), Y5
-	VCVTPS2PD (CX)(R9*4), Y6
-	VCVTPS2PD 16(CX)(R9*4), Y7
-	VMULPD    Y0, Y6, Y6
-	VSUBPD    Y6, Y4, Y4
-	VMULPD    Y0, Y7, Y7
-	VSUBPD    Y7, Y5, Y5
-	VCVTPS2PD (DX)(R9*4), Y6
-	VCVTPS2PD 16(DX)(R9*4), Y7
-	VMULPD    Y1, Y6, Y6
-	VSUBPD    Y6, Y4, Y4
-	VMULPD    Y1, Y7, Y7
-	VSUBPD    Y7, Y5, Y5
-	VCVTPS2PD (BX)(R9*4), Y6
-	VCVTPS2PD 16(BX)(R9*4), Y7
-	VMULPD    Y2, Y6, Y6
-	VSUBPD    Y6, Y4, Y4
-	VMULPD    Y2, Y7, Y7
-	VSUBPD    Y7, Y5, Y5
-	VCVTPS2PD (SI)(R9*4), Y6
-	VCVTPS2PD 16(SI)(R9*4), Y7
-	VMULPD    Y3, Y6, Y6
-	VSUBPD    Y6, Y4, Y4
-	VMULPD    Y3, Y7, Y7
-	VSUBPD    Y7, Y5, Y5
-	VMOVUPD   Y4, (AX)(R9*8)
-	VMOVUPD   Y5, 32(AX)(R9*8)
-	ADDQ      $0x08, R9
-	CMPQ      R9, R8
-	JLT       update4SingleAVX2_eight
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (CX)(R10*8), Y4
+	VMOVUPD    32(CX)(R10*8), Y5
+	PREFETCHT0 1024(DX)(R10*4)
+	VCVTPS2PD  (DX)(R10*4), Y6
+	VCVTPS2PD  16(DX)(R10*4), Y7
+	VMULPD     Y0, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y0, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(BX)(R10*4)
+	VCVTPS2PD  (BX)(R10*4), Y6
+	VCVTPS2PD  16(BX)(R10*4), Y7
+	VMULPD     Y1, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y1, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(SI)(R10*4)
+	VCVTPS2PD  (SI)(R10*4), Y6
+	VCVTPS2PD  16(SI)(R10*4), Y7
+	VMULPD     Y2, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y2, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	PREFETCHT0 1024(DI)(R10*4)
+	VCVTPS2PD  (DI)(R10*4), Y6
+	VCVTPS2PD  16(DI)(R10*4), Y7
+	VMULPD     Y3, Y6, Y6
+	VSUBPD     Y6, Y4, Y4
+	VMULPD     Y3, Y7, Y7
+	VSUBPD     Y7, Y5, Y5
+	VMOVUPD    Y4, (AX)(R10*8)
+	VMOVUPD    Y5, 32(AX)(R10*8)
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
+	JLT        update4SingleAVX2_eight
 
 update4SingleAVX2_rest:
-	SUBQ       R9, DI
+	SUBQ       R10, R8
 	JEQ        update4SingleAVX2_end
-	NEGQ       DI
-	LEAQ       mask64<>+64(SB), R8
-	LEAQ       mask32<>+32(SB), R10
-	VMOVUPD    (R8)(DI*8), Y4
-	VMASKMOVPD (AX)(R9*8), Y4, Y4
-	VMOVUPD    32(R8)(DI*8), Y5
-	VMASKMOVPD 32(AX)(R9*8), Y5, Y5
-	VMOVUPS    (R10)(DI*4), X6
-	VMASKMOVPS (CX)(R9*4), X6, X6
+	NEGQ       R8
+	LEAQ       mask64<>+64(SB), R9
+	LEAQ       mask32<>+32(SB), R11
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (R9)(R8*8), Y4
+	VMASKMOVPD (CX)(R10*8), Y4, Y4
+	VMOVUPD    32(R9)(R8*8), Y5
+	VMASKMOVPD 32(CX)(R10*8), Y5, Y5
+	PREFETCHT0 1024(DX)(R10*4)
+	VMOVUPS    (R11)(R8*4), X6
+	VMASKMOVPS (DX)(R10*4), X6, X6
 	VCVTPS2PD  X6, Y6
-	VMOVUPS    16(R10)(DI*4), X7
-	VMASKMOVPS 16(CX)(R9*4), X7, X7
+	VMOVUPS    16(R11)(R8*4), X7
+	VMASKMOVPS 16(DX)(R10*4), X7, X7
 	VCVTPS2PD  X7, Y7
 	VMULPD     Y0, Y6, Y6
 	VSUBPD     Y6, Y4, Y4
 	VMULPD     Y0, Y7, Y7
 	VSUBPD     Y7, Y5, Y5
-	VMOVUPS    (R10)(DI*4), X0
-	VMASKMOVPS (DX)(R9*4), X0, X0
+	PREFETCHT0 1024(BX)(R10*4)
+	VMOVUPS    (R11)(R8*4), X0
+	VMASKMOVPS (BX)(R10*4), X0, X0
 	VCVTPS2PD  X0, Y0
-	VMOVUPS    16(R10)(DI*4), X6
-	VMASKMOVPS 16(DX)(R9*4), X6, X6
+	VMOVUPS    16(R11)(R8*4), X6
+	VMASKMOVPS 16(BX)(R10*4), X6, X6
 	VCVTPS2PD  X6, Y6
 	VMULPD     Y1, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y1, Y6, Y6
 	VSUBPD     Y6, Y5, Y5
-	VMOVUPS    (R10)(DI*4), X0
-	VMASKMOVPS (BX)(R9*4), X0, X0
+	PREFETCHT0 1024(SI)(R10*4)
+	VMOVUPS    (R11)(R8*4), X0
+	VMASKMOVPS (SI)(R10*4), X0, X0
 	VCVTPS2PD  X0, Y0
-	VMOVUPS    16(R10)(DI*4), X1
-	VMASKMOVPS 16(BX)(R9*4), X1, X1
+	VMOVUPS    16(R11)(R8*4), X1
+	VMASKMOVPS 16(SI)(R10*4), X1, X1
 	VCVTPS2PD  X1, Y1
 	VMULPD     Y2, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y2, Y1, Y1
 	VSUBPD     Y1, Y5, Y5
-	VMOVUPS    (R10)(DI*4), X0
-	VMASKMOVPS (SI)(R9*4), X0, X0
+	PREFETCHT0 1024(DI)(R10*4)
+	VMOVUPS    (R11)(R8*4), X0
+	VMASKMOVPS (DI)(R10*4), X0, X0
 	VCVTPS2PD  X0, Y0
-	VMOVUPS    16(R10)(DI*4), X1
-	VMASKMOVPS 16(SI)(R9*4), X1, X1
+	VMOVUPS    16(R11)(R8*4), X1
+	VMASKMOVPS 16(DI)(R10*4), X1, X1
 	VCVTPS2PD  X1, Y1
 	VMULPD     Y3, Y0, Y0
 	VSUBPD     Y0, Y4, Y4
 	VMULPD     Y3, Y1, Y1
 	VSUBPD     Y1, Y5, Y5
-	VMOVUPD    (R8)(DI*8), Y0
-	VMASKMOVPD Y4, Y0, (AX)(R9*8)
-	VMOVUPD    32(R8)(DI*8), Y0
-	VMASKMOVPD Y5, Y0, 32(AX)(R9*8)
+	VMOVUPD    (R9)(R8*8), Y0
+	VMASKMOVPD Y4, Y0, (AX)(R10*8)
+	VMOVUPD    32(R9)(R8*8), Y0
+	VMASKMOVPD Y5, Y0, 32(AX)(R10*8)
 
 update4SingleAVX2_end:
 	VZEROUPPER
 	RET
 
 // func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·dot1SingleAVX2(SB), NOSPLIT, $0-32
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -688,17 +733,18 @@ TEXT ·dot1SingleAVX2(SB), NOSPLIT, $0-32
 	JEQ    dot1SingleAVX2_rest
 
 dot1SingleAVX2_eight:
-	VMOVUPD   (AX)(SI*8), Y2
-	VMOVUPD   32(AX)(SI*8), Y3
-	VCVTPS2PD (CX)(SI*4), Y4
-	VCVTPS2PD 16(CX)(SI*4), Y5
-	VMULPD    Y2, Y4, Y4
-	VADDPD    Y4, Y0, Y0
-	VMULPD    Y3, Y5, Y5
-	VADDPD    Y5, Y1, Y1
-	ADDQ      $0x08, SI
-	CMPQ      SI, BX
-	JLT       dot1SingleAVX2_eight
+	VMOVUPD    (AX)(SI*8), Y2
+	VMOVUPD    32(AX)(SI*8), Y3
+	PREFETCHT0 1024(CX)(SI*4)
+	VCVTPS2PD  (CX)(SI*4), Y4
+	VCVTPS2PD  16(CX)(SI*4), Y5
+	VMULPD     Y2, Y4, Y4
+	VADDPD     Y4, Y0, Y0
+	VMULPD     Y3, Y5, Y5
+	VADDPD     Y5, Y1, Y1
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        dot1SingleAVX2_eight
 
 dot1SingleAVX2_rest:
 	SUBQ       SI, DX
@@ -710,6 +756,7 @@ dot1SingleAVX2_rest:
 	VMASKMOVPD (AX)(SI*8), Y2, Y2
 	VMOVUPD    32(BX)(DX*8), Y3
 	VMASKMOVPD 32(AX)(SI*8), Y3, Y3
+	PREFETCHT0 1024(CX)(SI*4)
 	VMOVUPS    (DI)(DX*4), X4
 	VMASKMOVPS (CX)(SI*4), X4, X4
 	VCVTPS2PD  X4, Y4
@@ -732,58 +779,63 @@ dot1SingleAVX2_end:
 	VZEROUPPER
 	RET
 
-// func update1SingleAVX2(w *float64, h *[1]float64, c0 *float32, n int)
-// Requires: AVX
-TEXT ·update1SingleAVX2(SB), NOSPLIT, $0-32
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         n+24(FP), DX
-	MOVQ         h+8(FP), BX
-	VBROADCASTSD (BX), Y0
-	XORQ         SI, SI
-	MOVQ         DX, BX
-	ANDQ         $-8, BX
+// func update1SingleAVX2(d *float64, w *float64, h *[1]float64, c0 *float32, n int)
+// Requires: AVX, MMX+
+TEXT ·update1SingleAVX2(SB), NOSPLIT, $0-40
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         n+32(FP), BX
+	MOVQ         h+16(FP), SI
+	VBROADCASTSD (SI), Y0
+	XORQ         DI, DI
+	MOVQ         BX, SI
+	ANDQ         $-8, SI
 	JEQ          update1SingleAVX2_rest
 
 update1SingleAVX2_eight:
-	VMOVUPD   (AX)(SI*8), Y1
-	VMOVUPD   32(AX)(SI*8), Y2
-	VCVTPS2PD (CX)(SI*4), Y3
-	VCVTPS2PD 16(CX)(SI*4), Y4
-	VMULPD    Y0, Y3, Y3
-	VSUBPD    Y3, Y1, Y1
-	VMULPD    Y0, Y4, Y4
-	VSUBPD    Y4, Y2, Y2
-	VMOVUPD   Y1, (AX)(SI*8)
-	VMOVUPD   Y2, 32(AX)(SI*8)
-	ADDQ      $0x08, SI
-	CMPQ      SI, BX
-	JLT       update1SingleAVX2_eight
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (CX)(DI*8), Y1
+	VMOVUPD    32(CX)(DI*8), Y2
+	PREFETCHT0 1024(DX)(DI*4)
+	VCVTPS2PD  (DX)(DI*4), Y3
+	VCVTPS2PD  16(DX)(DI*4), Y4
+	VMULPD     Y0, Y3, Y3
+	VSUBPD     Y3, Y1, Y1
+	VMULPD     Y0, Y4, Y4
+	VSUBPD     Y4, Y2, Y2
+	VMOVUPD    Y1, (AX)(DI*8)
+	VMOVUPD    Y2, 32(AX)(DI*8)
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
+	JLT        update1SingleAVX2_eight
 
 update1SingleAVX2_rest:
-	SUBQ       SI, DX
+	SUBQ       DI, BX
 	JEQ        update1SingleAVX2_end
-	NEGQ       DX
-	LEAQ       mask64<>+64(SB), BX
-	LEAQ       mask32<>+32(SB), DI
-	VMOVUPD    (BX)(DX*8), Y1
-	VMASKMOVPD (AX)(SI*8), Y1, Y1
-	VMOVUPD    32(BX)(DX*8), Y2
-	VMASKMOVPD 32(AX)(SI*8), Y2, Y2
-	VMOVUPS    (DI)(DX*4), X3
-	VMASKMOVPS (CX)(SI*4), X3, X3
+	NEGQ       BX
+	LEAQ       mask64<>+64(SB), SI
+	LEAQ       mask32<>+32(SB), R8
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (SI)(BX*8), Y1
+	VMASKMOVPD (CX)(DI*8), Y1, Y1
+	VMOVUPD    32(SI)(BX*8), Y2
+	VMASKMOVPD 32(CX)(DI*8), Y2, Y2
+	PREFETCHT0 1024(DX)(DI*4)
+	VMOVUPS    (R8)(BX*4), X3
+	VMASKMOVPS (DX)(DI*4), X3, X3
 	VCVTPS2PD  X3, Y3
-	VMOVUPS    16(DI)(DX*4), X4
-	VMASKMOVPS 16(CX)(SI*4), X4, X4
+	VMOVUPS    16(R8)(BX*4), X4
+	VMASKMOVPS 16(DX)(DI*4), X4, X4
 	VCVTPS2PD  X4, Y4
 	VMULPD     Y0, Y3, Y3
 	VSUBPD     Y3, Y1, Y1
 	VMULPD     Y0, Y4, Y4
 	VSUBPD     Y4, Y2, Y2
-	VMOVUPD    (BX)(DX*8), Y0
-	VMASKMOVPD Y1, Y0, (AX)(SI*8)
-	VMOVUPD    32(BX)(DX*8), Y0
-	VMASKMOVPD Y2, Y0, 32(AX)(SI*8)
+	VMOVUPD    (SI)(BX*8), Y0
+	VMASKMOVPD Y1, Y0, (AX)(DI*8)
+	VMOVUPD    32(SI)(BX*8), Y0
+	VMASKMOVPD Y2, Y0, 32(AX)(DI*8)
 
 update1SingleAVX2_end:
 	VZEROUPPER
@@ -849,7 +901,7 @@ scaleSingleAVX2_end:
 	RET
 
 // func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
-// Requires: AVX, AVX512DQ, AVX512F, BMI2
+// Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
 TEXT ·dot4AVX512(SB), NOSPLIT, $0-56
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -867,43 +919,51 @@ TEXT ·dot4AVX512(SB), NOSPLIT, $0-56
 	JEQ    dot4AVX512_rest
 
 dot4AVX512_eight:
-	VMOVUPD (AX)(R9*8), Z4
-	VMOVUPD (CX)(R9*8), Z5
-	VMULPD  Z4, Z5, Z5
-	VADDPD  Z5, Z0, Z0
-	VMOVUPD (DX)(R9*8), Z5
-	VMULPD  Z4, Z5, Z5
-	VADDPD  Z5, Z1, Z1
-	VMOVUPD (BX)(R9*8), Z5
-	VMULPD  Z4, Z5, Z5
-	VADDPD  Z5, Z2, Z2
-	VMOVUPD (SI)(R9*8), Z5
-	VMULPD  Z4, Z5, Z5
-	VADDPD  Z5, Z3, Z3
-	ADDQ    $0x08, R9
-	CMPQ    R9, R8
-	JLT     dot4AVX512_eight
+	VMOVUPD    (AX)(R9*8), Z4
+	PREFETCHT0 1024(CX)(R9*8)
+	VMOVUPD    (CX)(R9*8), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z0, Z0
+	PREFETCHT0 1024(DX)(R9*8)
+	VMOVUPD    (DX)(R9*8), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z1, Z1
+	PREFETCHT0 1024(BX)(R9*8)
+	VMOVUPD    (BX)(R9*8), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z2, Z2
+	PREFETCHT0 1024(SI)(R9*8)
+	VMOVUPD    (SI)(R9*8), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z3, Z3
+	ADDQ       $0x08, R9
+	CMPQ       R9, R8
+	JLT        dot4AVX512_eight
 
 dot4AVX512_rest:
-	SUBQ      R9, DI
-	JEQ       dot4AVX512_end
-	MOVQ      $0x00000001, R8
-	SHLXQ     DI, R8, R8
-	DECQ      R8
-	KMOVW     R8, K1
-	VMOVUPD.Z (AX)(R9*8), K1, Z4
-	VMOVUPD.Z (CX)(R9*8), K1, Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z0, Z0
-	VMOVUPD.Z (DX)(R9*8), K1, Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z1, Z1
-	VMOVUPD.Z (BX)(R9*8), K1, Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z2, Z2
-	VMOVUPD.Z (SI)(R9*8), K1, Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z3, Z3
+	SUBQ       R9, DI
+	JEQ        dot4AVX512_end
+	MOVQ       $0x00000001, R8
+	SHLXQ      DI, R8, R8
+	DECQ       R8
+	KMOVW      R8, K1
+	VMOVUPD.Z  (AX)(R9*8), K1, Z4
+	PREFETCHT0 1024(CX)(R9*8)
+	VMOVUPD.Z  (CX)(R9*8), K1, Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z0, Z0
+	PREFETCHT0 1024(DX)(R9*8)
+	VMOVUPD.Z  (DX)(R9*8), K1, Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z1, Z1
+	PREFETCHT0 1024(BX)(R9*8)
+	VMOVUPD.Z  (BX)(R9*8), K1, Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z2, Z2
+	PREFETCHT0 1024(SI)(R9*8)
+	VMOVUPD.Z  (SI)(R9*8), K1, Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z3, Z3
 
 dot4AVX512_end:
 	MOVQ          sums+0(FP), AX
@@ -938,72 +998,83 @@ dot4AVX512_end:
 	VZEROUPPER
 	RET
 
-// func update4AVX512(w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
-// Requires: AVX, AVX512F, BMI2
-TEXT ·update4AVX512(SB), NOSPLIT, $0-56
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         c1+24(FP), DX
-	MOVQ         c2+32(FP), BX
-	MOVQ         c3+40(FP), SI
-	MOVQ         n+48(FP), DI
-	MOVQ         h+8(FP), R8
-	VBROADCASTSD (R8), Z0
-	VBROADCASTSD 8(R8), Z1
-	VBROADCASTSD 16(R8), Z2
-	VBROADCASTSD 24(R8), Z3
-	XORQ         R9, R9
-	MOVQ         DI, R8
-	ANDQ         $-8, R8
+// func update4AVX512(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+// Requires: AVX, AVX512F, BMI2, MMX+
+TEXT ·update4AVX512(SB), NOSPLIT, $0-64
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         c1+32(FP), BX
+	MOVQ         c2+40(FP), SI
+	MOVQ         c3+48(FP), DI
+	MOVQ         n+56(FP), R8
+	MOVQ         h+16(FP), R9
+	VBROADCASTSD (R9), Z0
+	VBROADCASTSD 8(R9), Z1
+	VBROADCASTSD 16(R9), Z2
+	VBROADCASTSD 24(R9), Z3
+	XORQ         R10, R10
+	MOVQ         R8, R9
+	ANDQ         $-8, R9
 	JEQ          update4AVX512_rest
 
 update4AVX512_eight:
-	VMOVUPD (AX)(R9*8), Z4
-	VMOVUPD (CX)(R9*8), Z5
-	VMULPD  Z0, Z5, Z5
-	VSUBPD  Z5, Z4, Z4
-	VMOVUPD (DX)(R9*8), Z5
-	VMULPD  Z1, Z5, Z5
-	VSUBPD  Z5, Z4, Z4
-	VMOVUPD (BX)(R9*8), Z5
-	VMULPD  Z2, Z5, Z5
-	VSUBPD  Z5, Z4, Z4
-	VMOVUPD (SI)(R9*8), Z5
-	VMULPD  Z3, Z5, Z5
-	VSUBPD  Z5, Z4, Z4
-	VMOVUPD Z4, (AX)(R9*8)
-	ADDQ    $0x08, R9
-	CMPQ    R9, R8
-	JLT     update4AVX512_eight
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (CX)(R10*8), Z4
+	PREFETCHT0 1024(DX)(R10*8)
+	VMOVUPD    (DX)(R10*8), Z5
+	VMULPD     Z0, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(BX)(R10*8)
+	VMOVUPD    (BX)(R10*8), Z5
+	VMULPD     Z1, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(SI)(R10*8)
+	VMOVUPD    (SI)(R10*8), Z5
+	VMULPD     Z2, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(DI)(R10*8)
+	VMOVUPD    (DI)(R10*8), Z5
+	VMULPD     Z3, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	VMOVUPD    Z4, (AX)(R10*8)
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
+	JLT        update4AVX512_eight
 
 update4AVX512_rest:
-	SUBQ      R9, DI
-	JEQ       update4AVX512_end
-	MOVQ      $0x00000001, R8
-	SHLXQ     DI, R8, R8
-	DECQ      R8
-	KMOVW     R8, K1
-	VMOVUPD.Z (AX)(R9*8), K1, Z4
-	VMOVUPD.Z (CX)(R9*8), K1, Z5
-	VMULPD    Z0, Z5, Z5
-	VSUBPD    Z5, Z4, Z4
-	VMOVUPD.Z (DX)(R9*8), K1, Z0
-	VMULPD    Z1, Z0, Z0
-	VSUBPD    Z0, Z4, Z4
-	VMOVUPD.Z (BX)(R9*8), K1, Z0
-	VMULPD    Z2, Z0, Z0
-	VSUBPD    Z0, Z4, Z4
-	VMOVUPD.Z (SI)(R9*8), K1, Z0
-	VMULPD    Z3, Z0, Z0
-	VSUBPD    Z0, Z4, Z4
-	VMOVUPD   Z4, K1, (AX)(R9*8)
+	SUBQ       R10, R8
+	JEQ        update4AVX512_end
+	MOVQ       $0x00000001, R9
+	SHLXQ      R8, R9, R9
+	DECQ       R9
+	KMOVW      R9, K1
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD.Z  (CX)(R10*8), K1, Z4
+	PREFETCHT0 1024(DX)(R10*8)
+	VMOVUPD.Z  (DX)(R10*8), K1, Z5
+	VMULPD     Z0, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(BX)(R10*8)
+	VMOVUPD.Z  (BX)(R10*8), K1, Z0
+	VMULPD     Z1, Z0, Z0
+	VSUBPD     Z0, Z4, Z4
+	PREFETCHT0 1024(SI)(R10*8)
+	VMOVUPD.Z  (SI)(R10*8), K1, Z0
+	VMULPD     Z2, Z0, Z0
+	VSUBPD     Z0, Z4, Z4
+	PREFETCHT0 1024(DI)(R10*8)
+	VMOVUPD.Z  (DI)(R10*8), K1, Z0
+	VMULPD     Z3, Z0, Z0
+	VSUBPD     Z0, Z4, Z4
+	VMOVUPD    Z4, K1, (AX)(R10*8)
 
 update4AVX512_end:
 	VZEROUPPER
 	RET
 
 // func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int)
-// Requires: AVX, AVX512DQ, AVX512F, BMI2
+// Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
 TEXT ·dot1AVX512(SB), NOSPLIT, $0-32
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -1015,25 +1086,27 @@ TEXT ·dot1AVX512(SB), NOSPLIT, $0-32
 	JEQ    dot1AVX512_rest
 
 dot1AVX512_eight:
-	VMOVUPD (AX)(SI*8), Z1
-	VMOVUPD (CX)(SI*8), Z2
-	VMULPD  Z1, Z2, Z2
-	VADDPD  Z2, Z0, Z0
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     dot1AVX512_eight
+	VMOVUPD    (AX)(SI*8), Z1
+	PREFETCHT0 1024(CX)(SI*8)
+	VMOVUPD    (CX)(SI*8), Z2
+	VMULPD     Z1, Z2, Z2
+	VADDPD     Z2, Z0, Z0
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        dot1AVX512_eight
 
 dot1AVX512_rest:
-	SUBQ      SI, DX
-	JEQ       dot1AVX512_end
-	MOVQ      $0x00000001, BX
-	SHLXQ     DX, BX, BX
-	DECQ      BX
-	KMOVW     BX, K1
-	VMOVUPD.Z (AX)(SI*8), K1, Z1
-	VMOVUPD.Z (CX)(SI*8), K1, Z2
-	VMULPD    Z1, Z2, Z2
-	VADDPD    Z2, Z0, Z0
+	SUBQ       SI, DX
+	JEQ        dot1AVX512_end
+	MOVQ       $0x00000001, BX
+	SHLXQ      DX, BX, BX
+	DECQ       BX
+	KMOVW      BX, K1
+	VMOVUPD.Z  (AX)(SI*8), K1, Z1
+	PREFETCHT0 1024(CX)(SI*8)
+	VMOVUPD.Z  (CX)(SI*8), K1, Z2
+	VMULPD     Z1, Z2, Z2
+	VADDPD     Z2, Z0, Z0
 
 dot1AVX512_end:
 	MOVQ          sums+0(FP), AX
@@ -1047,41 +1120,46 @@ dot1AVX512_end:
 	VZEROUPPER
 	RET
 
-// func update1AVX512(w *float64, h *[1]float64, c0 *float64, n int)
-// Requires: AVX, AVX512F, BMI2
-TEXT ·update1AVX512(SB), NOSPLIT, $0-32
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         n+24(FP), DX
-	MOVQ         h+8(FP), BX
-	VBROADCASTSD (BX), Z0
-	XORQ         SI, SI
-	MOVQ         DX, BX
-	ANDQ         $-8, BX
+// func update1AVX512(d *float64, w *float64, h *[1]float64, c0 *float64, n int)
+// Requires: AVX, AVX512F, BMI2, MMX+
+TEXT ·update1AVX512(SB), NOSPLIT, $0-40
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         n+32(FP), BX
+	MOVQ         h+16(FP), SI
+	VBROADCASTSD (SI), Z0
+	XORQ         DI, DI
+	MOVQ         BX, SI
+	ANDQ         $-8, SI
 	JEQ          update1AVX512_rest
 
 update1AVX512_eight:
-	VMOVUPD (AX)(SI*8), Z1
-	VMOVUPD (CX)(SI*8), Z2
-	VMULPD  Z0, Z2, Z2
-	VSUBPD  Z2, Z1, Z1
-	VMOVUPD Z1, (AX)(SI*8)
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     update1AVX512_eight
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (CX)(DI*8), Z1
+	PREFETCHT0 1024(DX)(DI*8)
+	VMOVUPD    (DX)(DI*8), Z2
+	VMULPD     Z0, Z2, Z2
+	VSUBPD     Z2, Z1, Z1
+	VMOVUPD    Z1, (AX)(DI*8)
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
+	JLT        update1AVX512_eight
 
 update1AVX512_rest:
-	SUBQ      SI, DX
-	JEQ       update1AVX512_end
-	MOVQ      $0x00000001, BX
-	SHLXQ     DX, BX, BX
-	DECQ      BX
-	KMOVW     BX, K1
-	VMOVUPD.Z (AX)(SI*8), K1, Z1
-	VMOVUPD.Z (CX)(SI*8), K1, Z2
-	VMULPD    Z0, Z2, Z2
-	VSUBPD    Z2, Z1, Z1
-	VMOVUPD   Z1, K1, (AX)(SI*8)
+	SUBQ       DI, BX
+	JEQ        update1AVX512_end
+	MOVQ       $0x00000001, SI
+	SHLXQ      BX, SI, SI
+	DECQ       SI
+	KMOVW      SI, K1
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD.Z  (CX)(DI*8), K1, Z1
+	PREFETCHT0 1024(DX)(DI*8)
+	VMOVUPD.Z  (DX)(DI*8), K1, Z2
+	VMULPD     Z0, Z2, Z2
+	VSUBPD     Z2, Z1, Z1
+	VMOVUPD    Z1, K1, (AX)(DI*8)
 
 update1AVX512_end:
 	VZEROUPPER
@@ -1126,7 +1204,7 @@ scaleAVX512_end:
 	RET
 
 // func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
-// Requires: AVX, AVX512DQ, AVX512F, BMI2
+// Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
 TEXT ·dot4SingleAVX512(SB), NOSPLIT, $0-56
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -1144,22 +1222,26 @@ TEXT ·dot4SingleAVX512(SB), NOSPLIT, $0-56
 	JEQ    dot4SingleAVX512_rest
 
 dot4SingleAVX512_eight:
-	VMOVUPD   (AX)(R9*8), Z4
-	VCVTPS2PD (CX)(R9*4), Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z0, Z0
-	VCVTPS2PD (DX)(R9*4), Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z1, Z1
-	VCVTPS2PD (BX)(R9*4), Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z2, Z2
-	VCVTPS2PD (SI)(R9*4), Z5
-	VMULPD    Z4, Z5, Z5
-	VADDPD    Z5, Z3, Z3
-	ADDQ      $0x08, R9
-	CMPQ      R9, R8
-	JLT       dot4SingleAVX512_eight
+	VMOVUPD    (AX)(R9*8), Z4
+	PREFETCHT0 1024(CX)(R9*4)
+	VCVTPS2PD  (CX)(R9*4), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z0, Z0
+	PREFETCHT0 1024(DX)(R9*4)
+	VCVTPS2PD  (DX)(R9*4), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z1, Z1
+	PREFETCHT0 1024(BX)(R9*4)
+	VCVTPS2PD  (BX)(R9*4), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z2, Z2
+	PREFETCHT0 1024(SI)(R9*4)
+	VCVTPS2PD  (SI)(R9*4), Z5
+	VMULPD     Z4, Z5, Z5
+	VADDPD     Z5, Z3, Z3
+	ADDQ       $0x08, R9
+	CMPQ       R9, R8
+	JLT        dot4SingleAVX512_eight
 
 dot4SingleAVX512_rest:
 	SUBQ        R9, DI
@@ -1169,15 +1251,19 @@ dot4SingleAVX512_rest:
 	DECQ        R8
 	KMOVW       R8, K1
 	VMOVUPD.Z   (AX)(R9*8), K1, Z4
+	PREFETCHT0  1024(CX)(R9*4)
 	VCVTPS2PD.Z (CX)(R9*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z0, Z0
+	PREFETCHT0  1024(DX)(R9*4)
 	VCVTPS2PD.Z (DX)(R9*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z1, Z1
+	PREFETCHT0  1024(BX)(R9*4)
 	VCVTPS2PD.Z (BX)(R9*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z2, Z2
+	PREFETCHT0  1024(SI)(R9*4)
 	VCVTPS2PD.Z (SI)(R9*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z3, Z3
@@ -1215,72 +1301,83 @@ dot4SingleAVX512_end:
 	VZEROUPPER
 	RET
 
-// func update4SingleAVX512(w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
-// Requires: AVX, AVX512F, BMI2
-TEXT ·update4SingleAVX512(SB), NOSPLIT, $0-56
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         c1+24(FP), DX
-	MOVQ         c2+32(FP), BX
-	MOVQ         c3+40(FP), SI
-	MOVQ         n+48(FP), DI
-	MOVQ         h+8(FP), R8
-	VBROADCASTSD (R8), Z0
-	VBROADCASTSD 8(R8), Z1
-	VBROADCASTSD 16(R8), Z2
-	VBROADCASTSD 24(R8), Z3
-	XORQ         R9, R9
-	MOVQ         DI, R8
-	ANDQ         $-8, R8
+// func update4SingleAVX512(d *float64, w *float64, h *[4]float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+// Requires: AVX, AVX512F, BMI2, MMX+
+TEXT ·update4SingleAVX512(SB), NOSPLIT, $0-64
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         c1+32(FP), BX
+	MOVQ         c2+40(FP), SI
+	MOVQ         c3+48(FP), DI
+	MOVQ         n+56(FP), R8
+	MOVQ         h+16(FP), R9
+	VBROADCASTSD (R9), Z0
+	VBROADCASTSD 8(R9), Z1
+	VBROADCASTSD 16(R9), Z2
+	VBROADCASTSD 24(R9), Z3
+	XORQ         R10, R10
+	MOVQ         R8, R9
+	ANDQ         $-8, R9
 	JEQ          update4SingleAVX512_rest
 
 update4SingleAVX512_eight:
-	VMOVUPD   (AX)(R9*8), Z4
-	VCVTPS2PD (CX)(R9*4), Z5
-	VMULPD    Z0, Z5, Z5
-	VSUBPD    Z5, Z4, Z4
-	VCVTPS2PD (DX)(R9*4), Z5
-	VMULPD    Z1, Z5, Z5
-	VSUBPD    Z5, Z4, Z4
-	VCVTPS2PD (BX)(R9*4), Z5
-	VMULPD    Z2, Z5, Z5
-	VSUBPD    Z5, Z4, Z4
-	VCVTPS2PD (SI)(R9*4), Z5
-	VMULPD    Z3, Z5, Z5
-	VSUBPD    Z5, Z4, Z4
-	VMOVUPD   Z4, (AX)(R9*8)
-	ADDQ      $0x08, R9
-	CMPQ      R9, R8
-	JLT       update4SingleAVX512_eight
+	PREFETCHT0 1024(CX)(R10*8)
+	VMOVUPD    (CX)(R10*8), Z4
+	PREFETCHT0 1024(DX)(R10*4)
+	VCVTPS2PD  (DX)(R10*4), Z5
+	VMULPD     Z0, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(BX)(R10*4)
+	VCVTPS2PD  (BX)(R10*4), Z5
+	VMULPD     Z1, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(SI)(R10*4)
+	VCVTPS2PD  (SI)(R10*4), Z5
+	VMULPD     Z2, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	PREFETCHT0 1024(DI)(R10*4)
+	VCVTPS2PD  (DI)(R10*4), Z5
+	VMULPD     Z3, Z5, Z5
+	VSUBPD     Z5, Z4, Z4
+	VMOVUPD    Z4, (AX)(R10*8)
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
+	JLT        update4SingleAVX512_eight
 
 update4SingleAVX512_rest:
-	SUBQ        R9, DI
+	SUBQ        R10, R8
 	JEQ         update4SingleAVX512_end
-	MOVQ        $0x00000001, R8
-	SHLXQ       DI, R8, R8
-	DECQ        R8
-	KMOVW       R8, K1
-	VMOVUPD.Z   (AX)(R9*8), K1, Z4
-	VCVTPS2PD.Z (CX)(R9*4), K1, Z5
+	MOVQ        $0x00000001, R9
+	SHLXQ       R8, R9, R9
+	DECQ        R9
+	KMOVW       R9, K1
+	PREFETCHT0  1024(CX)(R10*8)
+	VMOVUPD.Z   (CX)(R10*8), K1, Z4
+	PREFETCHT0  1024(DX)(R10*4)
+	VCVTPS2PD.Z (DX)(R10*4), K1, Z5
 	VMULPD      Z0, Z5, Z5
 	VSUBPD      Z5, Z4, Z4
-	VCVTPS2PD.Z (DX)(R9*4), K1, Z0
+	PREFETCHT0  1024(BX)(R10*4)
+	VCVTPS2PD.Z (BX)(R10*4), K1, Z0
 	VMULPD      Z1, Z0, Z0
 	VSUBPD      Z0, Z4, Z4
-	VCVTPS2PD.Z (BX)(R9*4), K1, Z0
+	PREFETCHT0  1024(SI)(R10*4)
+	VCVTPS2PD.Z (SI)(R10*4), K1, Z0
 	VMULPD      Z2, Z0, Z0
 	VSUBPD      Z0, Z4, Z4
-	VCVTPS2PD.Z (SI)(R9*4), K1, Z0
+	PREFETCHT0  1024(DI)(R10*4)
+	VCVTPS2PD.Z (DI)(R10*4), K1, Z0
 	VMULPD      Z3, Z0, Z0
 	VSUBPD      Z0, Z4, Z4
-	VMOVUPD     Z4, K1, (AX)(R9*8)
+	VMOVUPD     Z4, K1, (AX)(R10*8)
 
 update4SingleAVX512_end:
 	VZEROUPPER
 	RET
 
 // func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int)
-// Requires: AVX, AVX512DQ, AVX512F, BMI2
+// Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
 TEXT ·dot1SingleAVX512(SB), NOSPLIT, $0-32
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
@@ -1292,13 +1389,14 @@ TEXT ·dot1SingleAVX512(SB), NOSPLIT, $0-32
 	JEQ    dot1SingleAVX512_rest
 
 dot1SingleAVX512_eight:
-	VMOVUPD   (AX)(SI*8), Z1
-	VCVTPS2PD (CX)(SI*4), Z2
-	VMULPD    Z1, Z2, Z2
-	VADDPD    Z2, Z0, Z0
-	ADDQ      $0x08, SI
-	CMPQ      SI, BX
-	JLT       dot1SingleAVX512_eight
+	VMOVUPD    (AX)(SI*8), Z1
+	PREFETCHT0 1024(CX)(SI*4)
+	VCVTPS2PD  (CX)(SI*4), Z2
+	VMULPD     Z1, Z2, Z2
+	VADDPD     Z2, Z0, Z0
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        dot1SingleAVX512_eight
 
 dot1SingleAVX512_rest:
 	SUBQ        SI, DX
@@ -1308,6 +1406,7 @@ dot1SingleAVX512_rest:
 	DECQ        BX
 	KMOVW       BX, K1
 	VMOVUPD.Z   (AX)(SI*8), K1, Z1
+	PREFETCHT0  1024(CX)(SI*4)
 	VCVTPS2PD.Z (CX)(SI*4), K1, Z2
 	VMULPD      Z1, Z2, Z2
 	VADDPD      Z2, Z0, Z0
@@ -1324,41 +1423,46 @@ dot1SingleAVX512_end:
 	VZEROUPPER
 	RET
 
-// func update1SingleAVX512(w *float64, h *[1]float64, c0 *float32, n int)
-// Requires: AVX, AVX512F, BMI2
-TEXT ·update1SingleAVX512(SB), NOSPLIT, $0-32
-	MOVQ         w+0(FP), AX
-	MOVQ         c0+16(FP), CX
-	MOVQ         n+24(FP), DX
-	MOVQ         h+8(FP), BX
-	VBROADCASTSD (BX), Z0
-	XORQ         SI, SI
-	MOVQ         DX, BX
-	ANDQ         $-8, BX
+// func update1SingleAVX512(d *float64, w *float64, h *[1]float64, c0 *float32, n int)
+// Requires: AVX, AVX512F, BMI2, MMX+
+TEXT ·update1SingleAVX512(SB), NOSPLIT, $0-40
+	MOVQ         d+0(FP), AX
+	MOVQ         w+8(FP), CX
+	MOVQ         c0+24(FP), DX
+	MOVQ         n+32(FP), BX
+	MOVQ         h+16(FP), SI
+	VBROADCASTSD (SI), Z0
+	XORQ         DI, DI
+	MOVQ         BX, SI
+	ANDQ         $-8, SI
 	JEQ          update1SingleAVX512_rest
 
 update1SingleAVX512_eight:
-	VMOVUPD   (AX)(SI*8), Z1
-	VCVTPS2PD (CX)(SI*4), Z2
-	VMULPD    Z0, Z2, Z2
-	VSUBPD    Z2, Z1, Z1
-	VMOVUPD   Z1, (AX)(SI*8)
-	ADDQ      $0x08, SI
-	CMPQ      SI, BX
-	JLT       update1SingleAVX512_eight
+	PREFETCHT0 1024(CX)(DI*8)
+	VMOVUPD    (CX)(DI*8), Z1
+	PREFETCHT0 1024(DX)(DI*4)
+	VCVTPS2PD  (DX)(DI*4), Z2
+	VMULPD     Z0, Z2, Z2
+	VSUBPD     Z2, Z1, Z1
+	VMOVUPD    Z1, (AX)(DI*8)
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
+	JLT        update1SingleAVX512_eight
 
 update1SingleAVX512_rest:
-	SUBQ        SI, DX
+	SUBQ        DI, BX
 	JEQ         update1SingleAVX512_end
-	MOVQ        $0x00000001, BX
-	SHLXQ       DX, BX, BX
-	DECQ        BX
-	KMOVW       BX, K1
-	VMOVUPD.Z   (AX)(SI*8), K1, Z1
-	VCVTPS2PD.Z (CX)(SI*4), K1, Z2
+	MOVQ        $0x00000001, SI
+	SHLXQ       BX, SI, SI
+	DECQ        SI
+	KMOVW       SI, K1
+	PREFETCHT0  1024(CX)(DI*8)
+	VMOVUPD.Z   (CX)(DI*8), K1, Z1
+	PREFETCHT0  1024(DX)(DI*4)
+	VCVTPS2PD.Z (DX)(DI*4), K1, Z2
 	VMULPD      Z0, Z2, Z2
 	VSUBPD      Z2, Z1, Z1
-	VMOVUPD     Z1, K1, (AX)(SI*8)
+	VMOVUPD     Z1, K1, (AX)(DI*8)
 
 update1SingleAVX512_end:
 	VZEROUPPER

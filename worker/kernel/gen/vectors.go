@@ -38,6 +38,14 @@ func loadAll(names []string) (regs []Register) {
 	return regs
 }
 
+// columnAhead is how many bytes of a column are asked for before they are needed.
+const columnAhead = 1024
+
+// fetch asks for what a column holds columnAhead bytes further on.
+func fetch(e element, base, at Register) {
+	PREFETCHT0(Mem{Base: base, Index: at, Scale: uint8(e.size), Disp: columnAhead})
+}
+
 // dot writes sums[j] = w·c_j over n rows, in eight lanes.
 func dot(s isa, e element, k int, tables maskTables) {
 	name := fmt.Sprintf("dot%d%s%s", k, e.name, s.name)
@@ -53,6 +61,7 @@ func dot(s isa, e element, k int, tables maskTables) {
 	s.rows(name, n, tables, func(at Register, m *mask) {
 		v := s.load(double, w, at, m)
 		for j, c := range cols {
+			fetch(e, c, at)
 			x := s.load(e, c, at, m)
 			for p := range x {
 				VMULPD(v[p], x[p], x[p])
@@ -68,29 +77,32 @@ func dot(s isa, e element, k int, tables maskTables) {
 	RET()
 }
 
-// update writes w ← w − Σ_j h[j]·c_j over n rows, column after column.
+// update writes d ← w − Σ_j h[j]·c_j over n rows, column after column; d may be w.
 func update(s isa, e element, k int, tables maskTables) {
 	name := fmt.Sprintf("update%d%s%s", k, e.name, s.name)
 	names := columnParams(k)
-	TEXT(name, NOSPLIT, fmt.Sprintf("func(w *float64, h *[%d]float64, %s *%s, n int)", k, strings.Join(names, ", "), e.goType))
+	TEXT(name, NOSPLIT, fmt.Sprintf("func(d, w *float64, h *[%d]float64, %s *%s, n int)", k, strings.Join(names, ", "), e.goType))
 	Pragma("noescape")
-	Doc(fmt.Sprintf("%s subtracts h[j] times column j from w over n rows.", name))
-	w, cols, n := Load(Param("w"), GP64()), loadAll(names), Load(Param("n"), GP64())
+	Doc(fmt.Sprintf("%s sets d to w less h[j] times column j over n rows.", name))
+	d, w := Load(Param("d"), GP64()), Load(Param("w"), GP64())
+	cols, n := loadAll(names), Load(Param("n"), GP64())
 	h := Mem{Base: Load(Param("h"), GP64())}
 	coefficients := make([]VecVirtual, k)
 	for j := range coefficients {
 		coefficients[j] = s.spread(h.Offset(8 * j))
 	}
 	s.rows(name, n, tables, func(at Register, m *mask) {
+		fetch(double, w, at)
 		v := s.load(double, w, at, m)
 		for j, c := range cols {
+			fetch(e, c, at)
 			x := s.load(e, c, at, m)
 			for p := range x {
 				VMULPD(coefficients[j], x[p], x[p])
 				VSUBPD(x[p], v[p], v[p])
 			}
 		}
-		s.store(double, v, w, at, m, false)
+		s.store(double, v, d, at, m, false)
 	})
 	VZEROUPPER()
 	RET()
