@@ -4,7 +4,6 @@ import (
 	"context"
 	"fmt"
 	"math"
-	"runtime"
 	"testing"
 
 	"rowstead/partition/csr"
@@ -32,8 +31,6 @@ func singleBlock(b testing.TB, a *csr.Matrix) *Block {
 // bytes in all, and returns the seconds a byte, each array counted once: the best
 // of several passes.
 func triad(bytes int) float64 {
-	runtime.LockOSThread()
-	defer runtime.UnlockOSThread()
 	n := max(bytes/24, 1)
 	a, b, d := make([]float64, n), make([]float64, n), make([]float64, n)
 	for i := range n {
@@ -41,25 +38,23 @@ func triad(bytes int) float64 {
 	}
 	shortest := math.Inf(1)
 	for range 20 {
-		begin := threadSeconds()
+		begin := cpuSeconds()
 		for i, v := range b {
 			a[i] = v + 3*d[i]
 		}
-		shortest = min(shortest, threadSeconds()-begin)
+		shortest = min(shortest, cpuSeconds()-begin)
 	}
 	return shortest / float64(24*n)
 }
 
-// best keeps the shortest processor time of a task on one thread, which on a busy
+// best keeps the shortest processor time of a task, which on a busy
 // machine says more than the mean, and is what triad takes too.
 type best struct{ seconds float64 }
 
 func (t *best) time(task func()) {
-	runtime.LockOSThread()
-	defer runtime.UnlockOSThread()
-	begin := threadSeconds()
+	begin := cpuSeconds()
 	task()
-	if s := threadSeconds() - begin; t.seconds == 0 || s < t.seconds {
+	if s := cpuSeconds() - begin; t.seconds == 0 || s < t.seconds {
 		t.seconds = s
 	}
 }

@@ -6,5 +6,5 @@ import "time"
 
 var begun = time.Now()
 
-// threadSeconds is the time since the program began, where threads have no clock.
-func threadSeconds() float64 { return time.Since(begun).Seconds() }
+// cpuSeconds is the time since the program began, for want of a clock of the process.
+func cpuSeconds() float64 { return time.Since(begun).Seconds() }

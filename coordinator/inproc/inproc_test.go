@@ -150,7 +150,7 @@ func TestThreadsChangeNoBit(t *testing.T) {
 			for _, procs := range []int{1, 2, 8} {
 				runtime.GOMAXPROCS(procs)
 				for _, threads := range []int{1, 4} {
-					got := spacetest.Record(t, 40_000, method.Double, func(t *testing.T, p spacetest.Problem, _ bool) method.Space {
+					got := spacetest.Record(t, 24_000, method.Double, func(t *testing.T, p spacetest.Problem, _ bool) method.Space {
 						return build(t, p, blocks, threads, kind)
 					})
 					if want == nil {
