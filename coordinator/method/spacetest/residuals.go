@@ -61,34 +61,15 @@ func maxAbs(v []float64) float64 {
 // residuals returns what r = b − A·x says, and r in the units of the file.
 func (s *Simple) residuals(x []float64) (method.Residuals, []float64) {
 	s.Products++
-	m, n := s.p.Matrix, s.n
+	n := s.n
 	r, floor := make([]float64, n), make([]float64, n)
-	entry := make([]float64, n) // the largest |entry| of a row, 1 for an empty row
 	out := method.Residuals{Finite: true}
-	var frobenius []float64
 	for i := range n {
-		cols, vals := m.Row(i)
-		acc := compensated{hi: s.p.Right[i]}
-		floor[i] = math.Abs(s.p.Right[i])
-		rowSum := 0.0
-		for k, c := range cols {
-			acc.addProduct(-vals[k], x[c])
-			floor[i] += math.Abs(vals[k]) * math.Abs(x[c])
-			rowSum += math.Abs(vals[k])
-			entry[i] = math.Max(entry[i], math.Abs(vals[k]))
-			scaled := vals[k] * s.d[i]
-			if s.p.Symmetric {
-				scaled *= s.d[c]
-			}
-			frobenius = append(frobenius, scaled)
-		}
-		r[i] = acc.value()
-		if entry[i] == 0 {
-			entry[i] = 1
-		}
-		out.MatrixMax = math.Max(out.MatrixMax, rowSum)
+		r[i], floor[i] = s.residualRow(i, x)
 		out.Finite = out.Finite && finite(r[i]) && finite(x[i])
 	}
+	var entry []float64
+	entry, out.MatrixMax, out.InnerMatrix = s.matrixNorms()
 	scale := func(v []float64, by func(i int) float64) float64 {
 		w := make([]float64, n)
 		for i := range w {
@@ -108,8 +89,43 @@ func (s *Simple) residuals(x []float64) (method.Residuals, []float64) {
 	}
 	out.ResidualMax, out.RightMax = maxAbs(r), maxAbs(s.p.Right)
 	out.SolutionMax, out.Solution = maxAbs(x), norm(x)
-	out.InnerMatrix = norm(frobenius)
 	return out, r
+}
+
+// residualRow returns rᵢ and (|A|·|x| + |b|)ᵢ.
+func (s *Simple) residualRow(i int, x []float64) (r, floor float64) {
+	cols, vals := s.p.Matrix.Row(i)
+	acc := compensated{hi: s.p.Right[i]}
+	floor = math.Abs(s.p.Right[i])
+	for k, c := range cols {
+		acc.addProduct(-vals[k], x[c])
+		floor += math.Abs(vals[k]) * math.Abs(x[c])
+	}
+	return acc.value(), floor
+}
+
+// matrixNorms returns the largest |entry| of every row, 1 for an empty one, ‖A‖∞
+// and ‖D·A‖_F.
+func (s *Simple) matrixNorms() (entry []float64, largest, frobenius float64) {
+	entry = make([]float64, s.n)
+	var all []float64
+	for i := range s.n {
+		cols, vals := s.p.Matrix.Row(i)
+		sum := 0.0
+		for k, v := range vals {
+			sum += math.Abs(v)
+			v *= s.d[i]
+			if s.p.Symmetric {
+				v *= s.d[cols[k]]
+			}
+			all = append(all, v)
+		}
+		largest = math.Max(largest, sum)
+		if entry[i] = maxAbs(vals); entry[i] == 0 {
+			entry[i] = 1
+		}
+	}
+	return entry, largest, norm(all)
 }
 
 const epsilon = 0x1p-52

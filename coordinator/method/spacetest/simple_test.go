@@ -113,12 +113,11 @@ func TestSimpleConjugateGradients(t *testing.T) {
 		exps[i] = int16(i % 3)
 	}
 	s := New(Problem{Matrix: line(n, -1, -1), Right: ones(n), RowExponent: exps, Symmetric: true})
-	rr, rz, _ := s.StartConjugate(ctx)
+	_, rz, _ := s.StartConjugate(ctx)
 	beta := 0.0
 	for range 3 * n {
 		pq, _ := s.Direct(ctx, beta)
-		var next float64
-		rr, next, _ = s.Move(ctx, rz/pq)
+		rr, next, _ := s.Move(ctx, rz/pq)
 		if rr < 1e-28 {
 			break
 		}

@@ -111,47 +111,10 @@ func scenario(t *testing.T, sp method.Space, form method.BasisForm, see func(nam
 	t.Helper()
 	ctx := context.Background()
 	var yu []float64
-	for round := range 2 {
-		c := cycleOf(form, uint64(round)+5)
-		res := must(sp.Start(ctx, c))(t)
-		seeResiduals(see, "Start", res)
-		step := method.Step{Norm: res.Inner, Product: true, Dots: 3}
-		for j := range 7 {
-			step.Product = j < 6
-			out := must(sp.Advance(ctx, step))(t)
-			see("Gram", out.Gram...)
-			see("Dots", out.Dots...)
-			see("WW", out.WW)
-			see("SketchW", out.SketchW...)
-			see("HoldW", out.HoldW...)
-			if step.Product {
-				step = windowStep(out, j)
-			}
-		}
-		sb, hold, err := sp.Sketches(ctx, 1, 7)
-		if err != nil {
-			t.Fatal(err)
-		}
-		see("Sketches", sb...)
-		see("Sketches hold", hold...)
-		cor := correction(7, yu, 4)
-		if form != method.Replay {
-			seeResiduals(see, "Try", must(sp.Try(ctx, method.Correction{Y: cor.Y[:5], YU: cor.YU}))(t))
-			v, av, err := sp.Probe(ctx, cor)
-			if err != nil {
-				t.Fatal(err)
-			}
-			see("Probe", v, av)
-		}
-		res, _, err = sp.Correct(ctx, cor)
-		if err != nil {
-			t.Fatal(err)
-		}
-		seeResiduals(see, "Correct", res)
-		if err := sp.Keep(ctx); err != nil {
-			t.Fatal(err)
-		}
-		rec := must(sp.Recycle(ctx, cycleOf(form, uint64(round)+6)))(t)
+	for round := range uint64(2) {
+		steps(t, sp, cycleOf(form, round+5), see)
+		endCycle(t, sp, form, yu, see)
+		rec := must(sp.Recycle(ctx, cycleOf(form, round+6)))(t)
 		see("SU", rec.SU...)
 		see("SAZ", rec.SAZ...)
 		see("HoldAZ", rec.HoldAZ...)
@@ -164,6 +127,59 @@ func scenario(t *testing.T, sp method.Space, form method.BasisForm, see func(nam
 	}
 	see("Gradient", g, r)
 	if err := sp.Forget(ctx); err != nil {
+		t.Fatal(err)
+	}
+}
+
+// steps starts a cycle and takes seven steps, the last without a product.
+func steps(t *testing.T, sp method.Space, c method.Cycle, see func(name string, v ...float64)) {
+	t.Helper()
+	ctx := context.Background()
+	res := must(sp.Start(ctx, c))(t)
+	seeResiduals(see, "Start", res)
+	step := method.Step{Norm: res.Inner, Product: true, Dots: 3}
+	for j := range 7 {
+		step.Product = j < 6
+		out := must(sp.Advance(ctx, step))(t)
+		see("Gram", out.Gram...)
+		see("Dots", out.Dots...)
+		see("WW", out.WW)
+		see("SketchW", out.SketchW...)
+		see("HoldW", out.HoldW...)
+		if step.Product {
+			step = windowStep(out, j)
+		}
+	}
+	sb, hold, err := sp.Sketches(ctx, 1, 7)
+	if err != nil {
+		t.Fatal(err)
+	}
+	see("Sketches", sb...)
+	see("Sketches hold", hold...)
+}
+
+// endCycle tries, probes, corrects and keeps.
+func endCycle(t *testing.T, sp method.Space, form method.BasisForm, yu []float64, see func(name string, v ...float64)) {
+	t.Helper()
+	ctx := context.Background()
+	cor := correction(7, yu, 4)
+	if form != method.Replay {
+		seeResiduals(see, "Try", must(sp.Try(ctx, method.Correction{Y: cor.Y[:5], YU: cor.YU}))(t))
+		v, av, err := sp.Probe(ctx, cor)
+		if err != nil {
+			t.Fatal(err)
+		}
+		see("Probe", v, av)
+	}
+	res, products, err := sp.Correct(ctx, cor)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := map[bool]int{true: 6}[form == method.Replay]; products != want {
+		t.Errorf("Correct in %s form spent %d products, want %d", form, products, want)
+	}
+	seeResiduals(see, "Correct", res)
+	if err := sp.Keep(ctx); err != nil {
 		t.Fatal(err)
 	}
 }
