@@ -136,6 +136,9 @@ func (r *runner) tryHarder(last method.Result) bool {
 	if !changed || need.total(p.form) > r.most {
 		return false
 	}
+	if p.precondition != r.plan.precondition {
+		r.why["precondition"] = r.plan.precondition + " stagnated; this one fills in"
+	}
 	r.plan, r.harder = p, true
 	return true
 }
