@@ -18,7 +18,7 @@ func Dots[F Element](out, w []float64, cols [][]F, r Range) {
 	}
 	for r.Lo < r.Hi {
 		t := r.next(Tile)
-		dotsTile(out, w[t.Lo:t.Hi], cols, t.Lo)
+		dotsTile(out, w[t.Lo:t.Hi], cols, t.Lo, nearby)
 	}
 }
 
@@ -35,25 +35,29 @@ func SumSquares[F Element](w []F, r Range) float64 {
 		} else {
 			Widen(tile, w[t.Lo:t.Hi])
 		}
-		total += dot1(tile, tile)
+		total += dot1(tile, tile, nearby)
 	}
 	return total
 }
 
-// dotsTile adds w·cols[j][first:first+len(w)] to out[j], one tile or less.
-func dotsTile[F Element](out, w []float64, cols [][]F, first int) {
+// nearby is how many rows a pass over columns in memory asks for in advance.
+const nearby = 128
+
+// dotsTile adds w·cols[j][first:first+len(w)] to out[j], one tile or less, and
+// asks for the rows of the columns that stand ahead further on.
+func dotsTile[F Element](out, w []float64, cols [][]F, first, ahead int) {
 	last := first + len(w)
 	j := 0
 	for ; j+4 <= len(cols); j += 4 {
 		c := cols[j : j+4 : j+4]
-		s := dot4(w, c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last])
+		s := dot4(w, c[0][first:last], c[1][first:last], c[2][first:last], c[3][first:last], ahead)
 		out[j] += s[0]
 		out[j+1] += s[1]
 		out[j+2] += s[2]
 		out[j+3] += s[3]
 	}
 	for ; j < len(cols); j++ {
-		out[j] += dot1(w, cols[j][first:last])
+		out[j] += dot1(w, cols[j][first:last], ahead)
 	}
 }
 

@@ -42,27 +42,28 @@ func isDouble[F Element]() bool {
 func as64[F Element](c []F) *float64 { return (*float64)(unsafe.Pointer(unsafe.SliceData(c))) }
 func as32[F Element](c []F) *float32 { return (*float32)(unsafe.Pointer(unsafe.SliceData(c))) }
 
-// dot4 returns the dots of w with four columns of its length.
-func dot4[F Element](w []float64, c0, c1, c2, c3 []F) (sums [4]float64) {
+// dot4 returns the dots of w with four columns of its length. It asks for what
+// stands ahead rows further on in them, which may lie beyond their end.
+func dot4[F Element](w []float64, c0, c1, c2, c3 []F, ahead int) (sums [4]float64) {
 	n := len(w)
 	c0, c1, c2, c3 = c0[:n], c1[:n], c2[:n], c3[:n]
 	switch {
 	case chosen == plain:
 		return dot4Go(w, c0, c1, c2, c3)
 	case chosen == avx512 && isDouble[F]():
-		dot4AVX512(&sums, as64(w), as64(c0), as64(c1), as64(c2), as64(c3), n)
+		dot4AVX512(&sums, as64(w), as64(c0), as64(c1), as64(c2), as64(c3), n, ahead)
 	case chosen == avx512:
-		dot4SingleAVX512(&sums, as64(w), as32(c0), as32(c1), as32(c2), as32(c3), n)
+		dot4SingleAVX512(&sums, as64(w), as32(c0), as32(c1), as32(c2), as32(c3), n, ahead)
 	case isDouble[F]():
-		dot4AVX2(&sums, as64(w), as64(c0), as64(c1), as64(c2), as64(c3), n)
+		dot4AVX2(&sums, as64(w), as64(c0), as64(c1), as64(c2), as64(c3), n, ahead)
 	default:
-		dot4SingleAVX2(&sums, as64(w), as32(c0), as32(c1), as32(c2), as32(c3), n)
+		dot4SingleAVX2(&sums, as64(w), as32(c0), as32(c1), as32(c2), as32(c3), n, ahead)
 	}
 	return sums
 }
 
 // dot1 returns the dot of w with one column of its length.
-func dot1[F Element](w []float64, c []F) float64 {
+func dot1[F Element](w []float64, c []F, ahead int) float64 {
 	var sums [1]float64
 	n := len(w)
 	c = c[:n]
@@ -70,13 +71,13 @@ func dot1[F Element](w []float64, c []F) float64 {
 	case chosen == plain:
 		return dot1Go(w, c)
 	case chosen == avx512 && isDouble[F]():
-		dot1AVX512(&sums, as64(w), as64(c), n)
+		dot1AVX512(&sums, as64(w), as64(c), n, ahead)
 	case chosen == avx512:
-		dot1SingleAVX512(&sums, as64(w), as32(c), n)
+		dot1SingleAVX512(&sums, as64(w), as32(c), n, ahead)
 	case isDouble[F]():
-		dot1AVX2(&sums, as64(w), as64(c), n)
+		dot1AVX2(&sums, as64(w), as64(c), n, ahead)
 	default:
-		dot1SingleAVX2(&sums, as64(w), as32(c), n)
+		dot1SingleAVX2(&sums, as64(w), as32(c), n, ahead)
 	}
 	return sums[0]
 }

@@ -52,7 +52,7 @@ func pathsAgree[F Element](t *rapid.T, use func(p path), p path) {
 
 // allLoops is what the inner loops make of copies of w.
 func allLoops[F Element](w []float64, cols [][]F, h []float64) map[string][]float64 {
-	dots := dot4(w, cols[0], cols[1], cols[2], cols[3])
+	dots := dot4(w, cols[0], cols[1], cols[2], cols[3], Tile)
 	four, one, tile := clone(w), make([]float64, len(w)), clone(w)
 	update4(four, w, (*[4]float64)(h), cols[0], cols[1], cols[2], cols[3])
 	update1(one, w, h[0], cols[2])
@@ -60,7 +60,7 @@ func allLoops[F Element](w []float64, cols [][]F, h []float64) map[string][]floa
 	scaleInto(b, tile, h[1])
 	Widen(stored, b)
 	return map[string][]float64{
-		"dot4": dots[:], "dot1": {dot1(w, cols[1])}, "update4": four, "update1": one,
+		"dot4": dots[:], "dot1": {dot1(w, cols[1], 0)}, "update4": four, "update1": one,
 		"scale's tile": tile, "scale's vector": stored,
 	}
 }

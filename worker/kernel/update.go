@@ -36,21 +36,32 @@ func Correct[F Element](d []float64, cols [][]F, y []float64, r Range) {
 
 // Reduce sets w[r] ← w[r] − Σ_j h[j]·cols[j][r] and adds to out[j] the dot of the
 // new w with cols[j] over r, and to out[len(cols)] the sum of its squares. The
-// columns come from memory once: a tile of all of them stays in cache between
-// update and dots. Classical Gram-Schmidt done twice so reads the basis three
-// times a step, not four. The bits are those of Update, Dots and SumSquares,
-// one after the other.
+// columns come from memory once: a piece of all of them stays in the second
+// cache between update and dots. Classical Gram-Schmidt done twice so reads the basis three times a step, not
+// four. w has the bits of Update; the sums are taken over pieces, whose length
+// follows from the number of columns alone.
 func Reduce[F Element](out, w []float64, cols [][]F, h []float64, r Range) {
 	if len(h) != len(cols) || len(out) < len(cols)+1 {
 		panic("kernel: coefficients, sums and columns differ in number in Reduce")
 	}
+	rows := pieceRows(len(cols))
 	for r.Lo < r.Hi {
-		t := r.next(Tile)
-		tile := w[t.Lo:t.Hi]
-		updateTile(tile, tile, cols, h, t.Lo)
-		dotsTile(out, tile, cols, t.Lo)
-		out[len(cols)] += dot1(tile, tile)
+		t := r.next(rows)
+		piece := w[t.Lo:t.Hi]
+		updateTile(piece, piece, cols, h, t.Lo)
+		dotsTile(out, piece, cols, t.Lo, nearby)
+		out[len(cols)] += dot1(piece, piece, 0)
 	}
+}
+
+// pieceRows is a divisor of Tile such that so many columns of it take 256 KiB
+// of float64 at most, but no less than 64: all of Tile up to 32 columns.
+func pieceRows(columns int) int {
+	rows := Tile
+	for rows > 64 && rows*columns*8 > 1<<18 {
+		rows /= 2
+	}
+	return rows
 }
 
 // Next describes the basis vector that follows from w.
@@ -79,8 +90,8 @@ func (n *Next[F]) Form(gram []float64, r Range) {
 		tile := scratch[:t.Len()]
 		updateTile(tile, n.W[t.Lo:t.Hi], n.Cols, n.H, t.Lo)
 		scaleInto(n.B[t.Lo:t.Hi], tile, scale)
-		dotsTile(gram, tile, n.Window, t.Lo)
-		gram[len(n.Window)] += dot1(tile, tile)
+		dotsTile(gram, tile, n.Window, t.Lo, nearby)
+		gram[len(n.Window)] += dot1(tile, tile, 0)
 	}
 }
 

@@ -7,7 +7,7 @@ package kernel
 // dot4AVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int, ahead int)
 
 // update4AVX2 sets d to w less h[j] times column j over n rows.
 //
@@ -17,7 +17,7 @@ func update4AVX2(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float64
 // dot1AVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int)
+func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int, ahead int)
 
 // update1AVX2 sets d to w less h[j] times column j over n rows.
 //
@@ -32,7 +32,7 @@ func scaleAVX2(b *float64, tile *float64, factor *float64, n int)
 // dot4SingleAVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int, ahead int)
 
 // update4SingleAVX2 sets d to w less h[j] times column j over n rows.
 //
@@ -42,7 +42,7 @@ func update4SingleAVX2(d *float64, w *float64, h *[4]float64, c0 *float32, c1 *f
 // dot1SingleAVX2 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int)
+func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int, ahead int)
 
 // update1SingleAVX2 sets d to w less h[j] times column j over n rows.
 //
@@ -57,7 +57,7 @@ func scaleSingleAVX2(b *float32, tile *float64, factor *float64, n int)
 // dot4AVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int, ahead int)
 
 // update4AVX512 sets d to w less h[j] times column j over n rows.
 //
@@ -67,7 +67,7 @@ func update4AVX512(d *float64, w *float64, h *[4]float64, c0 *float64, c1 *float
 // dot1AVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int)
+func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int, ahead int)
 
 // update1AVX512 sets d to w less h[j] times column j over n rows.
 //
@@ -82,7 +82,7 @@ func scaleAVX512(b *float64, tile *float64, factor *float64, n int)
 // dot4SingleAVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int, ahead int)
 
 // update4SingleAVX512 sets d to w less h[j] times column j over n rows.
 //
@@ -92,7 +92,7 @@ func update4SingleAVX512(d *float64, w *float64, h *[4]float64, c0 *float32, c1 
 // dot1SingleAVX512 sets sums[j] to the dot of w and column j over n rows.
 //
 //go:noescape
-func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int)
+func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int, ahead int)
 
 // update1SingleAVX512 sets d to w less h[j] times column j over n rows.
 //

@@ -40,15 +40,16 @@ DATA mask32<>+56(SB)/4, $0x00000000
 DATA mask32<>+60(SB)/4, $0x00000000
 GLOBL mask32<>(SB), RODATA|NOPTR, $64
 
-// func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+// func dot4AVX2(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int, ahead int)
 // Requires: AVX, MMX+
-TEXT ·dot4AVX2(SB), NOSPLIT, $0-56
+TEXT ·dot4AVX2(SB), NOSPLIT, $0-64
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   c1+24(FP), DX
 	MOVQ   c2+32(FP), BX
 	MOVQ   c3+40(FP), SI
 	MOVQ   n+48(FP), DI
+	MOVQ   ahead+56(FP), R8
 	VXORPD Y0, Y0, Y0
 	VXORPD Y1, Y1, Y1
 	VXORPD Y2, Y2, Y2
@@ -57,88 +58,90 @@ TEXT ·dot4AVX2(SB), NOSPLIT, $0-56
 	VXORPD Y5, Y5, Y5
 	VXORPD Y6, Y6, Y6
 	VXORPD Y7, Y7, Y7
-	XORQ   R9, R9
-	MOVQ   DI, R8
-	ANDQ   $-8, R8
+	XORQ   R10, R10
+	MOVQ   DI, R9
+	ANDQ   $-8, R9
 	JEQ    dot4AVX2_rest
 
 dot4AVX2_eight:
-	VMOVUPD    (AX)(R9*8), Y8
-	VMOVUPD    32(AX)(R9*8), Y9
-	PREFETCHT0 1024(CX)(R9*8)
-	VMOVUPD    (CX)(R9*8), Y10
-	VMOVUPD    32(CX)(R9*8), Y11
+	LEAQ       (R10)(R8*1), R11
+	VMOVUPD    (AX)(R10*8), Y8
+	VMOVUPD    32(AX)(R10*8), Y9
+	PREFETCHT0 (CX)(R11*8)
+	VMOVUPD    (CX)(R10*8), Y10
+	VMOVUPD    32(CX)(R10*8), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
-	PREFETCHT0 1024(DX)(R9*8)
-	VMOVUPD    (DX)(R9*8), Y10
-	VMOVUPD    32(DX)(R9*8), Y11
+	PREFETCHT0 (DX)(R11*8)
+	VMOVUPD    (DX)(R10*8), Y10
+	VMOVUPD    32(DX)(R10*8), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
-	PREFETCHT0 1024(BX)(R9*8)
-	VMOVUPD    (BX)(R9*8), Y10
-	VMOVUPD    32(BX)(R9*8), Y11
+	PREFETCHT0 (BX)(R11*8)
+	VMOVUPD    (BX)(R10*8), Y10
+	VMOVUPD    32(BX)(R10*8), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
-	PREFETCHT0 1024(SI)(R9*8)
-	VMOVUPD    (SI)(R9*8), Y10
-	VMOVUPD    32(SI)(R9*8), Y11
+	PREFETCHT0 (SI)(R11*8)
+	VMOVUPD    (SI)(R10*8), Y10
+	VMOVUPD    32(SI)(R10*8), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y6, Y6
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y7, Y7
-	ADDQ       $0x08, R9
-	CMPQ       R9, R8
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
 	JLT        dot4AVX2_eight
 
 dot4AVX2_rest:
-	SUBQ       R9, DI
+	SUBQ       R10, DI
 	JEQ        dot4AVX2_end
 	NEGQ       DI
-	LEAQ       mask64<>+64(SB), R8
-	LEAQ       mask32<>+32(SB), R10
-	VMOVUPD    (R8)(DI*8), Y8
-	VMASKMOVPD (AX)(R9*8), Y8, Y8
-	VMOVUPD    32(R8)(DI*8), Y9
-	VMASKMOVPD 32(AX)(R9*8), Y9, Y9
-	PREFETCHT0 1024(CX)(R9*8)
-	VMOVUPD    (R8)(DI*8), Y10
-	VMASKMOVPD (CX)(R9*8), Y10, Y10
-	VMOVUPD    32(R8)(DI*8), Y11
-	VMASKMOVPD 32(CX)(R9*8), Y11, Y11
+	LEAQ       mask64<>+64(SB), R9
+	LEAQ       mask32<>+32(SB), R11
+	LEAQ       (R10)(R8*1), R8
+	VMOVUPD    (R9)(DI*8), Y8
+	VMASKMOVPD (AX)(R10*8), Y8, Y8
+	VMOVUPD    32(R9)(DI*8), Y9
+	VMASKMOVPD 32(AX)(R10*8), Y9, Y9
+	PREFETCHT0 (CX)(R8*8)
+	VMOVUPD    (R9)(DI*8), Y10
+	VMASKMOVPD (CX)(R10*8), Y10, Y10
+	VMOVUPD    32(R9)(DI*8), Y11
+	VMASKMOVPD 32(CX)(R10*8), Y11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
-	PREFETCHT0 1024(DX)(R9*8)
-	VMOVUPD    (R8)(DI*8), Y10
-	VMASKMOVPD (DX)(R9*8), Y10, Y10
-	VMOVUPD    32(R8)(DI*8), Y11
-	VMASKMOVPD 32(DX)(R9*8), Y11, Y11
+	PREFETCHT0 (DX)(R8*8)
+	VMOVUPD    (R9)(DI*8), Y10
+	VMASKMOVPD (DX)(R10*8), Y10, Y10
+	VMOVUPD    32(R9)(DI*8), Y11
+	VMASKMOVPD 32(DX)(R10*8), Y11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
-	PREFETCHT0 1024(BX)(R9*8)
-	VMOVUPD    (R8)(DI*8), Y10
-	VMASKMOVPD (BX)(R9*8), Y10, Y10
-	VMOVUPD    32(R8)(DI*8), Y11
-	VMASKMOVPD 32(BX)(R9*8), Y11, Y11
+	PREFETCHT0 (BX)(R8*8)
+	VMOVUPD    (R9)(DI*8), Y10
+	VMASKMOVPD (BX)(R10*8), Y10, Y10
+	VMOVUPD    32(R9)(DI*8), Y11
+	VMASKMOVPD 32(BX)(R10*8), Y11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
-	PREFETCHT0 1024(SI)(R9*8)
-	VMOVUPD    (R8)(DI*8), Y10
-	VMASKMOVPD (SI)(R9*8), Y10, Y10
-	VMOVUPD    32(R8)(DI*8), Y11
-	VMASKMOVPD 32(SI)(R9*8), Y11, Y11
+	PREFETCHT0 (SI)(R8*8)
+	VMOVUPD    (R9)(DI*8), Y10
+	VMASKMOVPD (SI)(R10*8), Y10, Y10
+	VMOVUPD    32(R9)(DI*8), Y11
+	VMASKMOVPD 32(SI)(R10*8), Y11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y6, Y6
 	VMULPD     Y9, Y11, Y11
@@ -287,48 +290,51 @@ update4AVX2_end:
 	VZEROUPPER
 	RET
 
-// func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int)
+// func dot1AVX2(sums *[1]float64, w *float64, c0 *float64, n int, ahead int)
 // Requires: AVX, MMX+
-TEXT ·dot1AVX2(SB), NOSPLIT, $0-32
+TEXT ·dot1AVX2(SB), NOSPLIT, $0-40
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   n+24(FP), DX
+	MOVQ   ahead+32(FP), BX
 	VXORPD Y0, Y0, Y0
 	VXORPD Y1, Y1, Y1
-	XORQ   SI, SI
-	MOVQ   DX, BX
-	ANDQ   $-8, BX
+	XORQ   DI, DI
+	MOVQ   DX, SI
+	ANDQ   $-8, SI
 	JEQ    dot1AVX2_rest
 
 dot1AVX2_eight:
-	VMOVUPD    (AX)(SI*8), Y2
-	VMOVUPD    32(AX)(SI*8), Y3
-	PREFETCHT0 1024(CX)(SI*8)
-	VMOVUPD    (CX)(SI*8), Y4
-	VMOVUPD    32(CX)(SI*8), Y5
+	LEAQ       (DI)(BX*1), R8
+	VMOVUPD    (AX)(DI*8), Y2
+	VMOVUPD    32(AX)(DI*8), Y3
+	PREFETCHT0 (CX)(R8*8)
+	VMOVUPD    (CX)(DI*8), Y4
+	VMOVUPD    32(CX)(DI*8), Y5
 	VMULPD     Y2, Y4, Y4
 	VADDPD     Y4, Y0, Y0
 	VMULPD     Y3, Y5, Y5
 	VADDPD     Y5, Y1, Y1
-	ADDQ       $0x08, SI
-	CMPQ       SI, BX
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
 	JLT        dot1AVX2_eight
 
 dot1AVX2_rest:
-	SUBQ       SI, DX
+	SUBQ       DI, DX
 	JEQ        dot1AVX2_end
 	NEGQ       DX
-	LEAQ       mask64<>+64(SB), BX
-	LEAQ       mask32<>+32(SB), DI
-	VMOVUPD    (BX)(DX*8), Y2
-	VMASKMOVPD (AX)(SI*8), Y2, Y2
-	VMOVUPD    32(BX)(DX*8), Y3
-	VMASKMOVPD 32(AX)(SI*8), Y3, Y3
-	PREFETCHT0 1024(CX)(SI*8)
-	VMOVUPD    (BX)(DX*8), Y4
-	VMASKMOVPD (CX)(SI*8), Y4, Y4
-	VMOVUPD    32(BX)(DX*8), Y5
-	VMASKMOVPD 32(CX)(SI*8), Y5, Y5
+	LEAQ       mask64<>+64(SB), SI
+	LEAQ       mask32<>+32(SB), R8
+	LEAQ       (DI)(BX*1), BX
+	VMOVUPD    (SI)(DX*8), Y2
+	VMASKMOVPD (AX)(DI*8), Y2, Y2
+	VMOVUPD    32(SI)(DX*8), Y3
+	VMASKMOVPD 32(AX)(DI*8), Y3, Y3
+	PREFETCHT0 (CX)(BX*8)
+	VMOVUPD    (SI)(DX*8), Y4
+	VMASKMOVPD (CX)(DI*8), Y4, Y4
+	VMOVUPD    32(SI)(DX*8), Y5
+	VMASKMOVPD 32(CX)(DI*8), Y5, Y5
 	VMULPD     Y2, Y4, Y4
 	VADDPD     Y4, Y0, Y0
 	VMULPD     Y3, Y5, Y5
@@ -406,7 +412,7 @@ update1AVX2_end:
 	RET
 
 // func scaleAVX2(b *float64, tile *float64, factor *float64, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·scaleAVX2(SB), NOSPLIT, $0-32
 	MOVQ         b+0(FP), AX
 	MOVQ         tile+8(FP), CX
@@ -419,17 +425,18 @@ TEXT ·scaleAVX2(SB), NOSPLIT, $0-32
 	JEQ          scaleAVX2_rest
 
 scaleAVX2_eight:
-	VMOVUPD (CX)(SI*8), Y1
-	VMOVUPD 32(CX)(SI*8), Y2
-	VMULPD  Y0, Y1, Y1
-	VMULPD  Y0, Y2, Y2
-	VMOVUPD Y1, (AX)(SI*8)
-	VMOVUPD Y2, 32(AX)(SI*8)
-	VMOVUPD Y1, (CX)(SI*8)
-	VMOVUPD Y2, 32(CX)(SI*8)
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     scaleAVX2_eight
+	PREFETCHT0 1024(AX)(SI*8)
+	VMOVUPD    (CX)(SI*8), Y1
+	VMOVUPD    32(CX)(SI*8), Y2
+	VMULPD     Y0, Y1, Y1
+	VMULPD     Y0, Y2, Y2
+	VMOVUPD    Y1, (AX)(SI*8)
+	VMOVUPD    Y2, 32(AX)(SI*8)
+	VMOVUPD    Y1, (CX)(SI*8)
+	VMOVUPD    Y2, 32(CX)(SI*8)
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        scaleAVX2_eight
 
 scaleAVX2_rest:
 	SUBQ       SI, DX
@@ -437,6 +444,7 @@ scaleAVX2_rest:
 	NEGQ       DX
 	LEAQ       mask64<>+64(SB), BX
 	LEAQ       mask32<>+32(SB), DI
+	PREFETCHT0 1024(AX)(SI*8)
 	VMOVUPD    (BX)(DX*8), Y1
 	VMASKMOVPD (CX)(SI*8), Y1, Y1
 	VMOVUPD    32(BX)(DX*8), Y2
@@ -456,15 +464,16 @@ scaleAVX2_end:
 	VZEROUPPER
 	RET
 
-// func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+// func dot4SingleAVX2(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int, ahead int)
 // Requires: AVX, MMX+
-TEXT ·dot4SingleAVX2(SB), NOSPLIT, $0-56
+TEXT ·dot4SingleAVX2(SB), NOSPLIT, $0-64
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   c1+24(FP), DX
 	MOVQ   c2+32(FP), BX
 	MOVQ   c3+40(FP), SI
 	MOVQ   n+48(FP), DI
+	MOVQ   ahead+56(FP), R8
 	VXORPD Y0, Y0, Y0
 	VXORPD Y1, Y1, Y1
 	VXORPD Y2, Y2, Y2
@@ -473,95 +482,97 @@ TEXT ·dot4SingleAVX2(SB), NOSPLIT, $0-56
 	VXORPD Y5, Y5, Y5
 	VXORPD Y6, Y6, Y6
 	VXORPD Y7, Y7, Y7
-	XORQ   R9, R9
-	MOVQ   DI, R8
-	ANDQ   $-8, R8
+	XORQ   R10, R10
+	MOVQ   DI, R9
+	ANDQ   $-8, R9
 	JEQ    dot4SingleAVX2_rest
 
 dot4SingleAVX2_eight:
-	VMOVUPD    (AX)(R9*8), Y8
-	VMOVUPD    32(AX)(R9*8), Y9
-	PREFETCHT0 1024(CX)(R9*4)
-	VCVTPS2PD  (CX)(R9*4), Y10
-	VCVTPS2PD  16(CX)(R9*4), Y11
+	LEAQ       (R10)(R8*1), R11
+	VMOVUPD    (AX)(R10*8), Y8
+	VMOVUPD    32(AX)(R10*8), Y9
+	PREFETCHT0 (CX)(R11*4)
+	VCVTPS2PD  (CX)(R10*4), Y10
+	VCVTPS2PD  16(CX)(R10*4), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
-	PREFETCHT0 1024(DX)(R9*4)
-	VCVTPS2PD  (DX)(R9*4), Y10
-	VCVTPS2PD  16(DX)(R9*4), Y11
+	PREFETCHT0 (DX)(R11*4)
+	VCVTPS2PD  (DX)(R10*4), Y10
+	VCVTPS2PD  16(DX)(R10*4), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
-	PREFETCHT0 1024(BX)(R9*4)
-	VCVTPS2PD  (BX)(R9*4), Y10
-	VCVTPS2PD  16(BX)(R9*4), Y11
+	PREFETCHT0 (BX)(R11*4)
+	VCVTPS2PD  (BX)(R10*4), Y10
+	VCVTPS2PD  16(BX)(R10*4), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
-	PREFETCHT0 1024(SI)(R9*4)
-	VCVTPS2PD  (SI)(R9*4), Y10
-	VCVTPS2PD  16(SI)(R9*4), Y11
+	PREFETCHT0 (SI)(R11*4)
+	VCVTPS2PD  (SI)(R10*4), Y10
+	VCVTPS2PD  16(SI)(R10*4), Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y6, Y6
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y7, Y7
-	ADDQ       $0x08, R9
-	CMPQ       R9, R8
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
 	JLT        dot4SingleAVX2_eight
 
 dot4SingleAVX2_rest:
-	SUBQ       R9, DI
+	SUBQ       R10, DI
 	JEQ        dot4SingleAVX2_end
 	NEGQ       DI
-	LEAQ       mask64<>+64(SB), R8
-	LEAQ       mask32<>+32(SB), R10
-	VMOVUPD    (R8)(DI*8), Y8
-	VMASKMOVPD (AX)(R9*8), Y8, Y8
-	VMOVUPD    32(R8)(DI*8), Y9
-	VMASKMOVPD 32(AX)(R9*8), Y9, Y9
-	PREFETCHT0 1024(CX)(R9*4)
-	VMOVUPS    (R10)(DI*4), X10
-	VMASKMOVPS (CX)(R9*4), X10, X10
+	LEAQ       mask64<>+64(SB), R9
+	LEAQ       mask32<>+32(SB), R11
+	LEAQ       (R10)(R8*1), R8
+	VMOVUPD    (R9)(DI*8), Y8
+	VMASKMOVPD (AX)(R10*8), Y8, Y8
+	VMOVUPD    32(R9)(DI*8), Y9
+	VMASKMOVPD 32(AX)(R10*8), Y9, Y9
+	PREFETCHT0 (CX)(R8*4)
+	VMOVUPS    (R11)(DI*4), X10
+	VMASKMOVPS (CX)(R10*4), X10, X10
 	VCVTPS2PD  X10, Y10
-	VMOVUPS    16(R10)(DI*4), X11
-	VMASKMOVPS 16(CX)(R9*4), X11, X11
+	VMOVUPS    16(R11)(DI*4), X11
+	VMASKMOVPS 16(CX)(R10*4), X11, X11
 	VCVTPS2PD  X11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y0, Y0
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y1, Y1
-	PREFETCHT0 1024(DX)(R9*4)
-	VMOVUPS    (R10)(DI*4), X10
-	VMASKMOVPS (DX)(R9*4), X10, X10
+	PREFETCHT0 (DX)(R8*4)
+	VMOVUPS    (R11)(DI*4), X10
+	VMASKMOVPS (DX)(R10*4), X10, X10
 	VCVTPS2PD  X10, Y10
-	VMOVUPS    16(R10)(DI*4), X11
-	VMASKMOVPS 16(DX)(R9*4), X11, X11
+	VMOVUPS    16(R11)(DI*4), X11
+	VMASKMOVPS 16(DX)(R10*4), X11, X11
 	VCVTPS2PD  X11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y2, Y2
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y3, Y3
-	PREFETCHT0 1024(BX)(R9*4)
-	VMOVUPS    (R10)(DI*4), X10
-	VMASKMOVPS (BX)(R9*4), X10, X10
+	PREFETCHT0 (BX)(R8*4)
+	VMOVUPS    (R11)(DI*4), X10
+	VMASKMOVPS (BX)(R10*4), X10, X10
 	VCVTPS2PD  X10, Y10
-	VMOVUPS    16(R10)(DI*4), X11
-	VMASKMOVPS 16(BX)(R9*4), X11, X11
+	VMOVUPS    16(R11)(DI*4), X11
+	VMASKMOVPS 16(BX)(R10*4), X11, X11
 	VCVTPS2PD  X11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y4, Y4
 	VMULPD     Y9, Y11, Y11
 	VADDPD     Y11, Y5, Y5
-	PREFETCHT0 1024(SI)(R9*4)
-	VMOVUPS    (R10)(DI*4), X10
-	VMASKMOVPS (SI)(R9*4), X10, X10
+	PREFETCHT0 (SI)(R8*4)
+	VMOVUPS    (R11)(DI*4), X10
+	VMASKMOVPS (SI)(R10*4), X10, X10
 	VCVTPS2PD  X10, Y10
-	VMOVUPS    16(R10)(DI*4), X11
-	VMASKMOVPS 16(SI)(R9*4), X11, X11
+	VMOVUPS    16(R11)(DI*4), X11
+	VMASKMOVPS 16(SI)(R10*4), X11, X11
 	VCVTPS2PD  X11, Y11
 	VMULPD     Y8, Y10, Y10
 	VADDPD     Y10, Y6, Y6
@@ -719,49 +730,52 @@ update4SingleAVX2_end:
 	VZEROUPPER
 	RET
 
-// func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int)
+// func dot1SingleAVX2(sums *[1]float64, w *float64, c0 *float32, n int, ahead int)
 // Requires: AVX, MMX+
-TEXT ·dot1SingleAVX2(SB), NOSPLIT, $0-32
+TEXT ·dot1SingleAVX2(SB), NOSPLIT, $0-40
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   n+24(FP), DX
+	MOVQ   ahead+32(FP), BX
 	VXORPD Y0, Y0, Y0
 	VXORPD Y1, Y1, Y1
-	XORQ   SI, SI
-	MOVQ   DX, BX
-	ANDQ   $-8, BX
+	XORQ   DI, DI
+	MOVQ   DX, SI
+	ANDQ   $-8, SI
 	JEQ    dot1SingleAVX2_rest
 
 dot1SingleAVX2_eight:
-	VMOVUPD    (AX)(SI*8), Y2
-	VMOVUPD    32(AX)(SI*8), Y3
-	PREFETCHT0 1024(CX)(SI*4)
-	VCVTPS2PD  (CX)(SI*4), Y4
-	VCVTPS2PD  16(CX)(SI*4), Y5
+	LEAQ       (DI)(BX*1), R8
+	VMOVUPD    (AX)(DI*8), Y2
+	VMOVUPD    32(AX)(DI*8), Y3
+	PREFETCHT0 (CX)(R8*4)
+	VCVTPS2PD  (CX)(DI*4), Y4
+	VCVTPS2PD  16(CX)(DI*4), Y5
 	VMULPD     Y2, Y4, Y4
 	VADDPD     Y4, Y0, Y0
 	VMULPD     Y3, Y5, Y5
 	VADDPD     Y5, Y1, Y1
-	ADDQ       $0x08, SI
-	CMPQ       SI, BX
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
 	JLT        dot1SingleAVX2_eight
 
 dot1SingleAVX2_rest:
-	SUBQ       SI, DX
+	SUBQ       DI, DX
 	JEQ        dot1SingleAVX2_end
 	NEGQ       DX
-	LEAQ       mask64<>+64(SB), BX
-	LEAQ       mask32<>+32(SB), DI
-	VMOVUPD    (BX)(DX*8), Y2
-	VMASKMOVPD (AX)(SI*8), Y2, Y2
-	VMOVUPD    32(BX)(DX*8), Y3
-	VMASKMOVPD 32(AX)(SI*8), Y3, Y3
-	PREFETCHT0 1024(CX)(SI*4)
-	VMOVUPS    (DI)(DX*4), X4
-	VMASKMOVPS (CX)(SI*4), X4, X4
+	LEAQ       mask64<>+64(SB), SI
+	LEAQ       mask32<>+32(SB), R8
+	LEAQ       (DI)(BX*1), BX
+	VMOVUPD    (SI)(DX*8), Y2
+	VMASKMOVPD (AX)(DI*8), Y2, Y2
+	VMOVUPD    32(SI)(DX*8), Y3
+	VMASKMOVPD 32(AX)(DI*8), Y3, Y3
+	PREFETCHT0 (CX)(BX*4)
+	VMOVUPS    (R8)(DX*4), X4
+	VMASKMOVPS (CX)(DI*4), X4, X4
 	VCVTPS2PD  X4, Y4
-	VMOVUPS    16(DI)(DX*4), X5
-	VMASKMOVPS 16(CX)(SI*4), X5, X5
+	VMOVUPS    16(R8)(DX*4), X5
+	VMASKMOVPS 16(CX)(DI*4), X5, X5
 	VCVTPS2PD  X5, Y5
 	VMULPD     Y2, Y4, Y4
 	VADDPD     Y4, Y0, Y0
@@ -842,7 +856,7 @@ update1SingleAVX2_end:
 	RET
 
 // func scaleSingleAVX2(b *float32, tile *float64, factor *float64, n int)
-// Requires: AVX
+// Requires: AVX, MMX+
 TEXT ·scaleSingleAVX2(SB), NOSPLIT, $0-32
 	MOVQ         b+0(FP), AX
 	MOVQ         tile+8(FP), CX
@@ -855,6 +869,7 @@ TEXT ·scaleSingleAVX2(SB), NOSPLIT, $0-32
 	JEQ          scaleSingleAVX2_rest
 
 scaleSingleAVX2_eight:
+	PREFETCHT0 1024(AX)(SI*4)
 	VMOVUPD    (CX)(SI*8), Y1
 	VMOVUPD    32(CX)(SI*8), Y2
 	VMULPD     Y0, Y1, Y1
@@ -877,6 +892,7 @@ scaleSingleAVX2_rest:
 	NEGQ       DX
 	LEAQ       mask64<>+64(SB), BX
 	LEAQ       mask32<>+32(SB), DI
+	PREFETCHT0 1024(AX)(SI*4)
 	VMOVUPD    (BX)(DX*8), Y1
 	VMASKMOVPD (CX)(SI*8), Y1, Y1
 	VMOVUPD    32(BX)(DX*8), Y2
@@ -900,68 +916,71 @@ scaleSingleAVX2_end:
 	VZEROUPPER
 	RET
 
-// func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int)
+// func dot4AVX512(sums *[4]float64, w *float64, c0 *float64, c1 *float64, c2 *float64, c3 *float64, n int, ahead int)
 // Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
-TEXT ·dot4AVX512(SB), NOSPLIT, $0-56
+TEXT ·dot4AVX512(SB), NOSPLIT, $0-64
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   c1+24(FP), DX
 	MOVQ   c2+32(FP), BX
 	MOVQ   c3+40(FP), SI
 	MOVQ   n+48(FP), DI
+	MOVQ   ahead+56(FP), R8
 	VXORPD Z0, Z0, Z0
 	VXORPD Z1, Z1, Z1
 	VXORPD Z2, Z2, Z2
 	VXORPD Z3, Z3, Z3
-	XORQ   R9, R9
-	MOVQ   DI, R8
-	ANDQ   $-8, R8
+	XORQ   R10, R10
+	MOVQ   DI, R9
+	ANDQ   $-8, R9
 	JEQ    dot4AVX512_rest
 
 dot4AVX512_eight:
-	VMOVUPD    (AX)(R9*8), Z4
-	PREFETCHT0 1024(CX)(R9*8)
-	VMOVUPD    (CX)(R9*8), Z5
+	LEAQ       (R10)(R8*1), R11
+	VMOVUPD    (AX)(R10*8), Z4
+	PREFETCHT0 (CX)(R11*8)
+	VMOVUPD    (CX)(R10*8), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z0, Z0
-	PREFETCHT0 1024(DX)(R9*8)
-	VMOVUPD    (DX)(R9*8), Z5
+	PREFETCHT0 (DX)(R11*8)
+	VMOVUPD    (DX)(R10*8), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z1, Z1
-	PREFETCHT0 1024(BX)(R9*8)
-	VMOVUPD    (BX)(R9*8), Z5
+	PREFETCHT0 (BX)(R11*8)
+	VMOVUPD    (BX)(R10*8), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z2, Z2
-	PREFETCHT0 1024(SI)(R9*8)
-	VMOVUPD    (SI)(R9*8), Z5
+	PREFETCHT0 (SI)(R11*8)
+	VMOVUPD    (SI)(R10*8), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z3, Z3
-	ADDQ       $0x08, R9
-	CMPQ       R9, R8
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
 	JLT        dot4AVX512_eight
 
 dot4AVX512_rest:
-	SUBQ       R9, DI
+	SUBQ       R10, DI
 	JEQ        dot4AVX512_end
-	MOVQ       $0x00000001, R8
-	SHLXQ      DI, R8, R8
-	DECQ       R8
-	KMOVW      R8, K1
-	VMOVUPD.Z  (AX)(R9*8), K1, Z4
-	PREFETCHT0 1024(CX)(R9*8)
-	VMOVUPD.Z  (CX)(R9*8), K1, Z5
+	MOVQ       $0x00000001, R9
+	SHLXQ      DI, R9, R9
+	DECQ       R9
+	KMOVW      R9, K1
+	LEAQ       (R10)(R8*1), DI
+	VMOVUPD.Z  (AX)(R10*8), K1, Z4
+	PREFETCHT0 (CX)(DI*8)
+	VMOVUPD.Z  (CX)(R10*8), K1, Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z0, Z0
-	PREFETCHT0 1024(DX)(R9*8)
-	VMOVUPD.Z  (DX)(R9*8), K1, Z5
+	PREFETCHT0 (DX)(DI*8)
+	VMOVUPD.Z  (DX)(R10*8), K1, Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z1, Z1
-	PREFETCHT0 1024(BX)(R9*8)
-	VMOVUPD.Z  (BX)(R9*8), K1, Z5
+	PREFETCHT0 (BX)(DI*8)
+	VMOVUPD.Z  (BX)(R10*8), K1, Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z2, Z2
-	PREFETCHT0 1024(SI)(R9*8)
-	VMOVUPD.Z  (SI)(R9*8), K1, Z5
+	PREFETCHT0 (SI)(DI*8)
+	VMOVUPD.Z  (SI)(R10*8), K1, Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z3, Z3
 
@@ -1073,38 +1092,41 @@ update4AVX512_end:
 	VZEROUPPER
 	RET
 
-// func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int)
+// func dot1AVX512(sums *[1]float64, w *float64, c0 *float64, n int, ahead int)
 // Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
-TEXT ·dot1AVX512(SB), NOSPLIT, $0-32
+TEXT ·dot1AVX512(SB), NOSPLIT, $0-40
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   n+24(FP), DX
+	MOVQ   ahead+32(FP), BX
 	VXORPD Z0, Z0, Z0
-	XORQ   SI, SI
-	MOVQ   DX, BX
-	ANDQ   $-8, BX
+	XORQ   DI, DI
+	MOVQ   DX, SI
+	ANDQ   $-8, SI
 	JEQ    dot1AVX512_rest
 
 dot1AVX512_eight:
-	VMOVUPD    (AX)(SI*8), Z1
-	PREFETCHT0 1024(CX)(SI*8)
-	VMOVUPD    (CX)(SI*8), Z2
+	LEAQ       (DI)(BX*1), R8
+	VMOVUPD    (AX)(DI*8), Z1
+	PREFETCHT0 (CX)(R8*8)
+	VMOVUPD    (CX)(DI*8), Z2
 	VMULPD     Z1, Z2, Z2
 	VADDPD     Z2, Z0, Z0
-	ADDQ       $0x08, SI
-	CMPQ       SI, BX
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
 	JLT        dot1AVX512_eight
 
 dot1AVX512_rest:
-	SUBQ       SI, DX
+	SUBQ       DI, DX
 	JEQ        dot1AVX512_end
-	MOVQ       $0x00000001, BX
-	SHLXQ      DX, BX, BX
-	DECQ       BX
-	KMOVW      BX, K1
-	VMOVUPD.Z  (AX)(SI*8), K1, Z1
-	PREFETCHT0 1024(CX)(SI*8)
-	VMOVUPD.Z  (CX)(SI*8), K1, Z2
+	MOVQ       $0x00000001, SI
+	SHLXQ      DX, SI, SI
+	DECQ       SI
+	KMOVW      SI, K1
+	LEAQ       (DI)(BX*1), DX
+	VMOVUPD.Z  (AX)(DI*8), K1, Z1
+	PREFETCHT0 (CX)(DX*8)
+	VMOVUPD.Z  (CX)(DI*8), K1, Z2
 	VMULPD     Z1, Z2, Z2
 	VADDPD     Z2, Z0, Z0
 
@@ -1166,7 +1188,7 @@ update1AVX512_end:
 	RET
 
 // func scaleAVX512(b *float64, tile *float64, factor *float64, n int)
-// Requires: AVX, AVX512F, BMI2
+// Requires: AVX, AVX512F, BMI2, MMX+
 TEXT ·scaleAVX512(SB), NOSPLIT, $0-32
 	MOVQ         b+0(FP), AX
 	MOVQ         tile+8(FP), CX
@@ -1179,92 +1201,97 @@ TEXT ·scaleAVX512(SB), NOSPLIT, $0-32
 	JEQ          scaleAVX512_rest
 
 scaleAVX512_eight:
-	VMOVUPD (CX)(SI*8), Z1
-	VMULPD  Z0, Z1, Z1
-	VMOVUPD Z1, (AX)(SI*8)
-	VMOVUPD Z1, (CX)(SI*8)
-	ADDQ    $0x08, SI
-	CMPQ    SI, BX
-	JLT     scaleAVX512_eight
+	PREFETCHT0 1024(AX)(SI*8)
+	VMOVUPD    (CX)(SI*8), Z1
+	VMULPD     Z0, Z1, Z1
+	VMOVUPD    Z1, (AX)(SI*8)
+	VMOVUPD    Z1, (CX)(SI*8)
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        scaleAVX512_eight
 
 scaleAVX512_rest:
-	SUBQ      SI, DX
-	JEQ       scaleAVX512_end
-	MOVQ      $0x00000001, BX
-	SHLXQ     DX, BX, BX
-	DECQ      BX
-	KMOVW     BX, K1
-	VMOVUPD.Z (CX)(SI*8), K1, Z1
-	VMULPD    Z0, Z1, Z1
-	VMOVUPD   Z1, K1, (AX)(SI*8)
-	VMOVUPD   Z1, K1, (CX)(SI*8)
+	SUBQ       SI, DX
+	JEQ        scaleAVX512_end
+	MOVQ       $0x00000001, BX
+	SHLXQ      DX, BX, BX
+	DECQ       BX
+	KMOVW      BX, K1
+	PREFETCHT0 1024(AX)(SI*8)
+	VMOVUPD.Z  (CX)(SI*8), K1, Z1
+	VMULPD     Z0, Z1, Z1
+	VMOVUPD    Z1, K1, (AX)(SI*8)
+	VMOVUPD    Z1, K1, (CX)(SI*8)
 
 scaleAVX512_end:
 	VZEROUPPER
 	RET
 
-// func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int)
+// func dot4SingleAVX512(sums *[4]float64, w *float64, c0 *float32, c1 *float32, c2 *float32, c3 *float32, n int, ahead int)
 // Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
-TEXT ·dot4SingleAVX512(SB), NOSPLIT, $0-56
+TEXT ·dot4SingleAVX512(SB), NOSPLIT, $0-64
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   c1+24(FP), DX
 	MOVQ   c2+32(FP), BX
 	MOVQ   c3+40(FP), SI
 	MOVQ   n+48(FP), DI
+	MOVQ   ahead+56(FP), R8
 	VXORPD Z0, Z0, Z0
 	VXORPD Z1, Z1, Z1
 	VXORPD Z2, Z2, Z2
 	VXORPD Z3, Z3, Z3
-	XORQ   R9, R9
-	MOVQ   DI, R8
-	ANDQ   $-8, R8
+	XORQ   R10, R10
+	MOVQ   DI, R9
+	ANDQ   $-8, R9
 	JEQ    dot4SingleAVX512_rest
 
 dot4SingleAVX512_eight:
-	VMOVUPD    (AX)(R9*8), Z4
-	PREFETCHT0 1024(CX)(R9*4)
-	VCVTPS2PD  (CX)(R9*4), Z5
+	LEAQ       (R10)(R8*1), R11
+	VMOVUPD    (AX)(R10*8), Z4
+	PREFETCHT0 (CX)(R11*4)
+	VCVTPS2PD  (CX)(R10*4), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z0, Z0
-	PREFETCHT0 1024(DX)(R9*4)
-	VCVTPS2PD  (DX)(R9*4), Z5
+	PREFETCHT0 (DX)(R11*4)
+	VCVTPS2PD  (DX)(R10*4), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z1, Z1
-	PREFETCHT0 1024(BX)(R9*4)
-	VCVTPS2PD  (BX)(R9*4), Z5
+	PREFETCHT0 (BX)(R11*4)
+	VCVTPS2PD  (BX)(R10*4), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z2, Z2
-	PREFETCHT0 1024(SI)(R9*4)
-	VCVTPS2PD  (SI)(R9*4), Z5
+	PREFETCHT0 (SI)(R11*4)
+	VCVTPS2PD  (SI)(R10*4), Z5
 	VMULPD     Z4, Z5, Z5
 	VADDPD     Z5, Z3, Z3
-	ADDQ       $0x08, R9
-	CMPQ       R9, R8
+	ADDQ       $0x08, R10
+	CMPQ       R10, R9
 	JLT        dot4SingleAVX512_eight
 
 dot4SingleAVX512_rest:
-	SUBQ        R9, DI
+	SUBQ        R10, DI
 	JEQ         dot4SingleAVX512_end
-	MOVQ        $0x00000001, R8
-	SHLXQ       DI, R8, R8
-	DECQ        R8
-	KMOVW       R8, K1
-	VMOVUPD.Z   (AX)(R9*8), K1, Z4
-	PREFETCHT0  1024(CX)(R9*4)
-	VCVTPS2PD.Z (CX)(R9*4), K1, Z5
+	MOVQ        $0x00000001, R9
+	SHLXQ       DI, R9, R9
+	DECQ        R9
+	KMOVW       R9, K1
+	LEAQ        (R10)(R8*1), DI
+	VMOVUPD.Z   (AX)(R10*8), K1, Z4
+	PREFETCHT0  (CX)(DI*4)
+	VCVTPS2PD.Z (CX)(R10*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z0, Z0
-	PREFETCHT0  1024(DX)(R9*4)
-	VCVTPS2PD.Z (DX)(R9*4), K1, Z5
+	PREFETCHT0  (DX)(DI*4)
+	VCVTPS2PD.Z (DX)(R10*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z1, Z1
-	PREFETCHT0  1024(BX)(R9*4)
-	VCVTPS2PD.Z (BX)(R9*4), K1, Z5
+	PREFETCHT0  (BX)(DI*4)
+	VCVTPS2PD.Z (BX)(R10*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z2, Z2
-	PREFETCHT0  1024(SI)(R9*4)
-	VCVTPS2PD.Z (SI)(R9*4), K1, Z5
+	PREFETCHT0  (SI)(DI*4)
+	VCVTPS2PD.Z (SI)(R10*4), K1, Z5
 	VMULPD      Z4, Z5, Z5
 	VADDPD      Z5, Z3, Z3
 
@@ -1376,38 +1403,41 @@ update4SingleAVX512_end:
 	VZEROUPPER
 	RET
 
-// func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int)
+// func dot1SingleAVX512(sums *[1]float64, w *float64, c0 *float32, n int, ahead int)
 // Requires: AVX, AVX512DQ, AVX512F, BMI2, MMX+
-TEXT ·dot1SingleAVX512(SB), NOSPLIT, $0-32
+TEXT ·dot1SingleAVX512(SB), NOSPLIT, $0-40
 	MOVQ   w+8(FP), AX
 	MOVQ   c0+16(FP), CX
 	MOVQ   n+24(FP), DX
+	MOVQ   ahead+32(FP), BX
 	VXORPD Z0, Z0, Z0
-	XORQ   SI, SI
-	MOVQ   DX, BX
-	ANDQ   $-8, BX
+	XORQ   DI, DI
+	MOVQ   DX, SI
+	ANDQ   $-8, SI
 	JEQ    dot1SingleAVX512_rest
 
 dot1SingleAVX512_eight:
-	VMOVUPD    (AX)(SI*8), Z1
-	PREFETCHT0 1024(CX)(SI*4)
-	VCVTPS2PD  (CX)(SI*4), Z2
+	LEAQ       (DI)(BX*1), R8
+	VMOVUPD    (AX)(DI*8), Z1
+	PREFETCHT0 (CX)(R8*4)
+	VCVTPS2PD  (CX)(DI*4), Z2
 	VMULPD     Z1, Z2, Z2
 	VADDPD     Z2, Z0, Z0
-	ADDQ       $0x08, SI
-	CMPQ       SI, BX
+	ADDQ       $0x08, DI
+	CMPQ       DI, SI
 	JLT        dot1SingleAVX512_eight
 
 dot1SingleAVX512_rest:
-	SUBQ        SI, DX
+	SUBQ        DI, DX
 	JEQ         dot1SingleAVX512_end
-	MOVQ        $0x00000001, BX
-	SHLXQ       DX, BX, BX
-	DECQ        BX
-	KMOVW       BX, K1
-	VMOVUPD.Z   (AX)(SI*8), K1, Z1
-	PREFETCHT0  1024(CX)(SI*4)
-	VCVTPS2PD.Z (CX)(SI*4), K1, Z2
+	MOVQ        $0x00000001, SI
+	SHLXQ       DX, SI, SI
+	DECQ        SI
+	KMOVW       SI, K1
+	LEAQ        (DI)(BX*1), DX
+	VMOVUPD.Z   (AX)(DI*8), K1, Z1
+	PREFETCHT0  (CX)(DX*4)
+	VCVTPS2PD.Z (CX)(DI*4), K1, Z2
 	VMULPD      Z1, Z2, Z2
 	VADDPD      Z2, Z0, Z0
 
@@ -1469,7 +1499,7 @@ update1SingleAVX512_end:
 	RET
 
 // func scaleSingleAVX512(b *float32, tile *float64, factor *float64, n int)
-// Requires: AVX, AVX512F, BMI2
+// Requires: AVX, AVX512F, BMI2, MMX+
 TEXT ·scaleSingleAVX512(SB), NOSPLIT, $0-32
 	MOVQ         b+0(FP), AX
 	MOVQ         tile+8(FP), CX
@@ -1482,30 +1512,32 @@ TEXT ·scaleSingleAVX512(SB), NOSPLIT, $0-32
 	JEQ          scaleSingleAVX512_rest
 
 scaleSingleAVX512_eight:
-	VMOVUPD   (CX)(SI*8), Z1
-	VMULPD    Z0, Z1, Z1
-	VCVTPD2PS Z1, Y1
-	VMOVUPS   Y1, (AX)(SI*4)
-	VCVTPS2PD Y1, Z1
-	VMOVUPD   Z1, (CX)(SI*8)
-	ADDQ      $0x08, SI
-	CMPQ      SI, BX
-	JLT       scaleSingleAVX512_eight
+	PREFETCHT0 1024(AX)(SI*4)
+	VMOVUPD    (CX)(SI*8), Z1
+	VMULPD     Z0, Z1, Z1
+	VCVTPD2PS  Z1, Y1
+	VMOVUPS    Y1, (AX)(SI*4)
+	VCVTPS2PD  Y1, Z1
+	VMOVUPD    Z1, (CX)(SI*8)
+	ADDQ       $0x08, SI
+	CMPQ       SI, BX
+	JLT        scaleSingleAVX512_eight
 
 scaleSingleAVX512_rest:
-	SUBQ      SI, DX
-	JEQ       scaleSingleAVX512_end
-	MOVQ      $0x00000001, BX
-	SHLXQ     DX, BX, BX
-	DECQ      BX
-	KMOVW     BX, K1
-	VMOVUPD.Z (CX)(SI*8), K1, Z1
-	VMULPD    Z0, Z1, Z1
-	VCVTPD2PS Z1, Y0
-	VMOVAPS   Y0, Y2
-	VMOVUPS   Z2, K1, (AX)(SI*4)
-	VCVTPS2PD Y0, Z1
-	VMOVUPD   Z1, K1, (CX)(SI*8)
+	SUBQ       SI, DX
+	JEQ        scaleSingleAVX512_end
+	MOVQ       $0x00000001, BX
+	SHLXQ      DX, BX, BX
+	DECQ       BX
+	KMOVW      BX, K1
+	PREFETCHT0 1024(AX)(SI*4)
+	VMOVUPD.Z  (CX)(SI*8), K1, Z1
+	VMULPD     Z0, Z1, Z1
+	VCVTPD2PS  Z1, Y0
+	VMOVAPS    Y0, Y2
+	VMOVUPS    Z2, K1, (AX)(SI*4)
+	VCVTPS2PD  Y0, Z1
+	VMOVUPD    Z1, K1, (CX)(SI*8)
 
 scaleSingleAVX512_end:
 	VZEROUPPER

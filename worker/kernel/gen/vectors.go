@@ -46,22 +46,26 @@ func fetch(e element, base, at Register) {
 	PREFETCHT0(Mem{Base: base, Index: at, Scale: uint8(e.size), Disp: columnAhead})
 }
 
-// dot writes sums[j] = w·c_j over n rows, in eight lanes.
+// dot writes sums[j] = w·c_j over n rows, in eight lanes, and asks for the rows
+// that stand ahead rows further on in the columns.
 func dot(s isa, e element, k int, tables maskTables) {
 	name := fmt.Sprintf("dot%d%s%s", k, e.name, s.name)
 	names := columnParams(k)
-	TEXT(name, NOSPLIT, fmt.Sprintf("func(sums *[%d]float64, w *float64, %s *%s, n int)", k, strings.Join(names, ", "), e.goType))
+	TEXT(name, NOSPLIT, fmt.Sprintf("func(sums *[%d]float64, w *float64, %s *%s, n, ahead int)", k, strings.Join(names, ", "), e.goType))
 	Pragma("noescape")
 	Doc(fmt.Sprintf("%s sets sums[j] to the dot of w and column j over n rows.", name))
 	w, cols, n := Load(Param("w"), GP64()), loadAll(names), Load(Param("n"), GP64())
+	ahead := Load(Param("ahead"), GP64())
 	acc := make([]eight, k)
 	for j := range acc {
 		acc[j] = s.zero()
 	}
 	s.rows(name, n, tables, func(at Register, m *mask) {
+		further := GP64()
+		LEAQ(Mem{Base: at, Index: ahead, Scale: 1}, further)
 		v := s.load(double, w, at, m)
 		for j, c := range cols {
-			fetch(e, c, at)
+			PREFETCHT0(Mem{Base: c, Index: further, Scale: uint8(e.size)})
 			x := s.load(e, c, at, m)
 			for p := range x {
 				VMULPD(v[p], x[p], x[p])
@@ -118,6 +122,7 @@ func scale(s isa, e element, tables maskTables) {
 	factor := s.spread(Mem{Base: Load(Param("factor"), GP64())})
 	n := Load(Param("n"), GP64())
 	s.rows(name, n, tables, func(at Register, m *mask) {
+		fetch(e, b, at)
 		v := s.load(double, tile, at, m)
 		for _, r := range v {
 			VMULPD(factor, r, r)
