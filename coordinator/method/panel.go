@@ -124,20 +124,16 @@ func (c *cycle) conditionLimit() float64 {
 // last two estimates, drawn on, meet the aim.
 func (c *cycle) size() int {
 	a, b := c.earlier, c.last
-	if b.steps < calmSteps || b.condition > calmLimit || a.steps == b.steps {
+	rate := math.Log(a.debiased/b.debiased) / float64(b.steps-a.steps)
+	if a.steps == 0 || a.steps == b.steps || b.debiased <= c.aim || !(rate > 0) {
 		return smallPanel
 	}
-	rate := math.Log(a.debiased/b.debiased) / float64(b.steps-a.steps)
-	left := math.Log(b.debiased/c.aim) / rate
-	if b.debiased <= c.aim || rate <= 0 {
-		left = math.Inf(1)
-	}
-	gone := float64(c.steps - b.steps)
+	left := math.Log(b.debiased/c.aim)/rate - float64(c.steps-b.steps)
 	switch {
-	case left-gone > farPanels*largePanel:
+	case left < smallPanel:
+		return max(2, int(math.Ceil(left)))
+	case left > farPanels*largePanel && b.steps >= calmSteps && b.condition <= calmLimit:
 		return largePanel
-	case left-gone < smallPanel:
-		return max(2, int(math.Ceil(left-gone)))
 	}
 	return smallPanel
 }

@@ -33,7 +33,6 @@ func trials() []trial {
 		{"log-normal 30³, 6 decades, diagonal", func() *csr.Matrix { return problems.LogNormal([]int{30, 30, 30}, 6, 4, 0) }, precond.Diagonal, 282},
 		{"Helmholtz 120², ILU(0)", func() *csr.Matrix { return problems.Helmholtz2D(120, 0.05) }, precond.ILU0, 902},
 		{"Grcar 20000", func() *csr.Matrix { return problems.Grcar(20000, 3) }, precond.None, 326},
-		{"circuit 20000, ILU(0)", func() *csr.Matrix { return problems.Circuit(20000, 0) }, precond.ILU0, 1597},
 	}
 }
 
