@@ -45,13 +45,16 @@ const (
 	leastCycle    = 30
 )
 
+// programBytes is what the program itself holds, measured on small systems.
+const programBytes = 24e6
+
 // parts lists what a run holds at its largest. Reading is over when the basis is
 // taken, so that the larger of the two counts.
 func (s size) parts(f form) []part {
 	vector := 8 * s.rows
 	matrix := 12*s.entries + 8*s.rows
 	vectors := 6*vector + 3*2*s.rows + 2*vector*s.columns
-	list := []part{{"matrix", matrix}, {"vectors", vectors}}
+	list := []part{{"program", programBytes}, {"matrix", matrix}, {"vectors", vectors}}
 	if fill := s.factorEntries(); fill > 0 {
 		list = append(list, part{"preconditioner", 12*fill + 24*s.rows})
 	}
@@ -68,7 +71,7 @@ func (s size) parts(f form) []part {
 	}
 	// Beside b_j itself the small problem keeps Q, R and the sketches.
 	sketch := 4 * (k + 2*s.recycle + 4)
-	return append(list, part{"basis", basis}, part{"recycled", 2 * vector * s.recycle}, part{"sketches", 8*sketch*k*2 + 16*k*k})
+	return append(list, part{"basis", basis}, part{"recycled", 3 * vector * s.recycle}, part{"sketches", 8*sketch*k*2 + 16*k*k})
 }
 
 // factorEntries is how many numbers the preconditioner stores.

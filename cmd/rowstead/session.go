@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"runtime/debug"
 	"strings"
 	"time"
 
@@ -41,6 +42,7 @@ func (a *app) solve(s *session) error {
 		s.rec.ID, s.rec.Path, s.rec.Resumed = s.old.ID, s.old.Path, s.old.Resumed+1
 	}
 	a.hold(s.rec, s.flags.job.Out, coordinator.ShortName(s.flags.job.Out))
+	keepWithin(s.flags.job.Memory)
 	err := coordinator.Run(context.Background(), s.flags.job, a.rim(s), s.rec)
 	a.interrupt.gentle.Store(true) // what follows is short and should be whole
 	a.screen.clear()
@@ -50,6 +52,14 @@ func (a *app) solve(s *session) error {
 		return err
 	}
 	return a.conclude(s)
+}
+
+// keepWithin makes the run-time system collect what is left over before the
+// process grows beyond so many bytes; 0 leaves it alone.
+func keepWithin(bytes int64) {
+	if bytes > 0 {
+		debug.SetMemoryLimit(bytes)
+	}
 }
 
 // hold tells the interrupt handler what it may have to clean up and print.
