@@ -154,7 +154,7 @@ func BenchmarkOrthogonal(b *testing.B) {
 
 // BenchmarkCombine forms 16 combinations of 300 vectors.
 func BenchmarkCombine(b *testing.B) {
-	const n, k, d = 20_480, 300, 16
+	const n, k, d = 20_880, 300, 16
 	cols, dst, t := columns[float64](newRand(1), n, k), columns[float64](newRand(2), n, d), vector(newRand(3), k*d)
 	own := newWalk(n, 8*(k+2*d), func(r Range) { Combine(dst, cols, t, k, r) })
 	b.ReportAllocs()

@@ -37,9 +37,9 @@ func Correct[F Element](d []float64, cols [][]F, y []float64, r Range) {
 // Reduce sets w[r] ← w[r] − Σ_j h[j]·cols[j][r] and adds to out[j] the dot of the
 // new w with cols[j] over r, and to out[len(cols)] the sum of its squares. The
 // columns come from memory once: a piece of all of them stays in the second
-// cache between update and dots. Classical Gram-Schmidt done twice so reads the basis three times a step, not
-// four. w has the bits of Update; the sums are taken over pieces, whose length
-// follows from the number of columns alone.
+// cache between update and dots. Classical Gram-Schmidt done twice so reads the
+// basis three times a step, not four. w has the bits of Update; the sums are
+// taken over pieces, whose length follows from the number of columns alone.
 func Reduce[F Element](out, w []float64, cols [][]F, h []float64, r Range) {
 	if len(h) != len(cols) || len(out) < len(cols)+1 {
 		panic("kernel: coefficients, sums and columns differ in number in Reduce")
@@ -83,6 +83,12 @@ func (n *Next[F]) Form(gram []float64, r Range) {
 	if len(n.H) != len(n.Cols) || len(gram) < len(n.Window)+1 {
 		panic("kernel: coefficients, sums and columns differ in number in Form")
 	}
+	// B joins the last one to three vectors of the window, so that a window of
+	// four with B makes one group of four columns.
+	var last [4][]F
+	whole := len(n.Window) &^ 3
+	rest := last[:copy(last[:], n.Window[whole:])+1]
+	rest[len(rest)-1] = n.B
 	var scratch [Tile]float64
 	scale := 1 / n.Norm
 	for r.Lo < r.Hi {
@@ -90,8 +96,8 @@ func (n *Next[F]) Form(gram []float64, r Range) {
 		tile := scratch[:t.Len()]
 		updateTile(tile, n.W[t.Lo:t.Hi], n.Cols, n.H, t.Lo)
 		scaleInto(n.B[t.Lo:t.Hi], tile, scale)
-		dotsTile(gram, tile, n.Window, t.Lo, nearby)
-		gram[len(n.Window)] += dot1(tile, tile, 0)
+		dotsTile(gram, tile, n.Window[:whole], t.Lo, nearby)
+		dotsTile(gram[whole:], tile, rest, t.Lo, nearby)
 	}
 }
 
