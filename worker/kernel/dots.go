@@ -68,43 +68,28 @@ func tree(a *[8]float64) float64 {
 }
 
 // dot4Go is dot4 in plain Go: four columns against w, all of one length.
-func dot4Go[F Element](w []float64, c0, c1, c2, c3 []F) (sums [4]float64) {
-	sums[0], sums[1] = dot2Go(w, c0, c1)
-	sums[2], sums[3] = dot2Go(w, c2, c3)
-	return sums
+func dot4Go[F Element](w []float64, c0, c1, c2, c3 []F) [4]float64 {
+	return [4]float64{dot1Go(w, c0), dot1Go(w, c1), dot1Go(w, c2), dot1Go(w, c3)}
 }
 
-// dot2Go keeps two columns of lanes at a time, as many as registers hold.
-func dot2Go[F Element](w []float64, c0, c1 []F) (s0, s1 float64) {
-	var a, b [8]float64
-	c0, c1 = c0[:len(w)], c1[:len(w)]
-	i := 0
-	for ; i+8 <= len(w); i += 8 {
-		v := (*[8]float64)(w[i:])
-		p, q := (*[8]F)(c0[i:]), (*[8]F)(c1[i:])
-		for l := range v {
-			a[l] += float64(v[l] * float64(p[l]))
-			b[l] += float64(v[l] * float64(q[l]))
-		}
-	}
-	for l := 0; i < len(w); i, l = i+1, l+1 {
-		a[l&7] += float64(w[i] * float64(c0[i]))
-		b[l&7] += float64(w[i] * float64(c1[i]))
-	}
-	return tree(&a), tree(&b)
-}
-
-// dot1Go is dot1 in plain Go: w·c in eight lanes.
+// dot1Go is dot1 in plain Go: w·c in eight lanes, which are written out so that
+// they stay in registers.
 func dot1Go[F Element](w []float64, c []F) float64 {
-	var a [8]float64
+	var a0, a1, a2, a3, a4, a5, a6, a7 float64
 	c = c[:len(w)]
 	i := 0
 	for ; i+8 <= len(w); i += 8 {
 		v, p := (*[8]float64)(w[i:]), (*[8]F)(c[i:])
-		for l := range v {
-			a[l] += float64(v[l] * float64(p[l]))
-		}
+		a0 += float64(v[0] * float64(p[0]))
+		a1 += float64(v[1] * float64(p[1]))
+		a2 += float64(v[2] * float64(p[2]))
+		a3 += float64(v[3] * float64(p[3]))
+		a4 += float64(v[4] * float64(p[4]))
+		a5 += float64(v[5] * float64(p[5]))
+		a6 += float64(v[6] * float64(p[6]))
+		a7 += float64(v[7] * float64(p[7]))
 	}
+	a := [8]float64{a0, a1, a2, a3, a4, a5, a6, a7}
 	for l := 0; i < len(w); i, l = i+1, l+1 {
 		a[l&7] += float64(w[i] * float64(c[i]))
 	}
