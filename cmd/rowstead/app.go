@@ -24,9 +24,10 @@ type app struct {
 	pending        replace.Pending
 	interrupt      interrupt
 
-	json  bool // print one object and nothing else on standard output
-	quiet bool
-	asked []string // the arguments
+	asked  []string // the arguments
+	object bool     // they ask for --json; fixed, so that watch may read it
+	json   bool     // print one object and nothing else on standard output
+	quiet  bool
 
 	mu sync.Mutex // guards what follows
 	// record of the run, if there is one; printed as the object
@@ -39,24 +40,23 @@ type app struct {
 	screen screen
 }
 
-func newApp(stdout, stderr io.Writer) *app {
-	a := &app{stdout: stdout, stderr: stderr}
+func newApp(args []string, stdout, stderr io.Writer) *app {
+	a := &app{asked: args, object: wantsJSON(args), stdout: stdout, stderr: stderr}
 	a.screen.w = stderr
 	return a
 }
 
 // run carries out the command line and returns the exit status. Whatever
 // happens, a person reads one line and, with --json, a program reads one object.
-func (a *app) run(args []string) (status int) {
-	a.asked = args
+func (a *app) run() (status int) {
 	defer func() {
 		if fault := recover(); fault != nil {
 			status = a.crashed(fault, debug.Stack())
 		}
 	}()
 	root := a.commands()
-	a.json = wantsJSON(args)
-	root.SetArgs(args)
+	a.json = a.object
+	root.SetArgs(a.asked)
 	err := root.Execute()
 	var verdict *verdictError
 	if errors.As(err, &verdict) {

@@ -43,7 +43,7 @@ func (a *app) watch(signals <-chan os.Signal, exit func(int)) {
 		a.abandon()
 		a.screen.clear()
 		fmt.Fprintln(a.stderr, "rowstead: interrupted; nothing was left half-written")
-		if a.json {
+		if a.object {
 			r := report.New("solve")
 			r.Reason, r.Error = interruptedText, "interrupted before there was an answer to keep"
 			a.sayObject(r.JSON())

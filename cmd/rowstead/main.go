@@ -15,7 +15,7 @@ import (
 func main() {
 	signals := make(chan os.Signal, 2)
 	signal.Notify(signals, os.Interrupt, syscall.SIGTERM)
-	a := newApp(os.Stdout, os.Stderr)
+	a := newApp(os.Args[1:], os.Stdout, os.Stderr)
 	go a.watch(signals, os.Exit)
-	os.Exit(a.run(os.Args[1:]))
+	os.Exit(a.run())
 }
