@@ -204,14 +204,22 @@ func (r *runner) options(base int) method.Options {
 	return o
 }
 
-// behind runs a task beside the recurrence.
+// behind runs a task beside the recurrence. A panic of the task is raised again
+// in the goroutine that waits, where the program can end in order.
 func behind(task func()) (wait func()) {
 	done := make(chan struct{})
+	var fault any
 	go func() {
 		defer close(done)
+		defer func() { fault = recover() }()
 		task()
 	}()
-	return func() { <-done }
+	return func() {
+		<-done
+		if fault != nil {
+			panic(fault)
+		}
+	}
 }
 
 // curvePoints is how many points of the convergence are kept at most.
