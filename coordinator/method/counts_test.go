@@ -22,6 +22,10 @@ func TestProductsAgainstAnotherProgram(t *testing.T) {
 	counts := problems.Counts()
 	logs, seeds := map[string]float64{}, map[string]float64{}
 	for i, c := range problems.Cases() {
+		family, seed, random := strings.Cut(c.Name, ", seed ")
+		if random && !everySeed && (seed > "2" || strings.HasPrefix(family, "circuit")) {
+			continue
+		}
 		switch c.Precondition {
 		case precond.None, precond.Diagonal, precond.ILU0, precond.ILUT:
 		default:
@@ -38,7 +42,7 @@ func TestProductsAgainstAnotherProgram(t *testing.T) {
 		if res.Met == counts[i].Stands || counts[i].Stands && res.Reason != method.ReasonStagnated {
 			t.Errorf("%s, %s: met %v %q", c.Name, c.Precondition, res.Met, res.Reason)
 		}
-		if family, _, random := strings.Cut(c.Name, ", seed "); random {
+		if random {
 			logs[family] += math.Log(ratio)
 			seeds[family]++
 			continue

@@ -6,9 +6,9 @@ import (
 	"testing"
 
 	"rowstead/coordinator/method"
-	"rowstead/coordinator/method/spacetest"
 	"rowstead/partition/csr"
 	"rowstead/partition/samples/problems"
+	"rowstead/worker/precond"
 )
 
 // neumann is the five-point graph Laplacian of an m×m grid: constants are its
@@ -46,7 +46,7 @@ func TestNeumann(t *testing.T) {
 		{"inconsistent", random, false},
 	} {
 		for _, kind := range []string{method.Sketched, method.Orthogonal} {
-			sp := spacetest.New(spacetest.Problem{Matrix: a, Right: c.b, RowExponent: rowExponents(a)})
+			sp := place(t, a, c.b, 2, precond.None)
 			res, err := method.Solve(context.Background(), sp, method.Options{Method: kind})
 			if err != nil {
 				t.Fatal(err)

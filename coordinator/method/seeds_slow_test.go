@@ -1,0 +1,5 @@
+//go:build slow
+
+package method_test
+
+const everySeed = true
