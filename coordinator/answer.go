@@ -100,12 +100,14 @@ func (s *system) emptyAgainst(b []float64) []int {
 	return rows
 }
 
-// findEmpty remembers the rows without a nonzero entry.
-func (s *system) findEmpty() {
+// findTrouble remembers the rows without a nonzero entry, and whether all columns
+// sum to zero.
+func (s *system) findTrouble() {
 	for i := range s.matrix.Rows {
 		_, vals := s.matrix.Row(i)
 		if !nonzero(vals) {
 			s.empty = append(s.empty, i)
 		}
 	}
+	s.balanced = columnsBalance(s.matrix)
 }

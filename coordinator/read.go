@@ -23,6 +23,8 @@ type system struct {
 	complex bool
 	real    bool  // the right side came as a real one
 	empty   []int // rows without a nonzero entry
+	// balanced says that every column sums to zero.
+	balanced bool
 }
 
 // look reads the matrix's header and refuses what cannot be solved, before any

@@ -99,7 +99,7 @@ func (r *runner) read(ctx context.Context) error {
 		if failed != nil {
 			return failed
 		}
-		r.sys.findEmpty()
+		r.sys.findTrouble()
 		r.rec.Inputs, r.rec.Entries = list, r.sys.matrix.Entries()
 		return nil
 	})

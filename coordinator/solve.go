@@ -61,20 +61,42 @@ func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side
 	if !nonzero(b) {
 		start = make([]float64, len(b)) // A·x = 0: x = 0 is the answer
 	}
-	r.placed.SetRight(r.forward(b))
+	// Where no x can meet b, the nearest right side that one can is solved for:
+	// the best answer there is, at the price of a good-natured system.
+	solvable := r.sys.solvable(b, r.job.Tolerance)
+	r.placed.SetRight(r.forward(solvable))
 	r.placed.SetGuess(r.forward(start))
 	var last method.Result
 	err := r.timed(&r.rec.Seconds.Solve, func() (err error) {
-		last, err = r.attempts(ctx, &side)
-		return err
+		if last, err = r.attempts(ctx, &side); err != nil || last.Met || last.Method != method.CG {
+			return err
+		}
+		return r.keepBetter(ctx, start)
 	})
 	if err != nil {
 		return side, err
 	}
+	r.placed.SetRight(r.forward(b))
 	r.rim.Phase(report.Checking)
 	err = r.timed(&r.rec.Seconds.Check, func() error { return r.check(ctx, last, &side) })
 	r.rim.Phase(report.Stepping)
 	return side, err
+}
+
+// keepBetter goes back to the x of the start where conjugate gradients, which
+// lower no residual step by step, have left a worse one.
+func (r *runner) keepBetter(ctx context.Context, start []float64) error {
+	reached, err := r.placed.Check(ctx)
+	if err != nil {
+		return err
+	}
+	x := r.placed.Solution()
+	r.placed.SetGuess(r.forward(start))
+	before, err := r.placed.Check(ctx)
+	if err == nil && reached.Finite && reached.Inner < before.Inner {
+		r.placed.SetGuess(x)
+	}
+	return err
 }
 
 func nonzero(b []float64) bool {

@@ -84,10 +84,10 @@ func (r *runner) fileRow(row int) int {
 
 // explain sharpens the reason of a short side and says what to try.
 func (r *runner) explain(res method.Residuals, side *report.Side) {
-	b := r.sys.right[side.Column]
-	if rows := r.sys.emptyAgainst(b); len(rows) > 0 && side.Reason != ReasonInterrupted && side.Reason != ReasonTime {
+	why := r.sys.contradiction(r.sys.right[side.Column], r.job.Tolerance)
+	if why != "" && side.Reason != ReasonInterrupted && side.Reason != ReasonTime {
 		side.Reason = method.ReasonContradictory
-		r.rec.Advice = fmt.Sprintf("%s: no entry on the left, but something on the right; look at what was meant to be there", rowsText(rows))
+		r.rec.Advice = why
 		return
 	}
 	r.rec.Advice = advice(side.Reason, res, r.job, r.plan)
