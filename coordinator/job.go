@@ -42,6 +42,7 @@ type Job struct {
 	SketchRows    int
 	Seed          uint64
 	Blocks        int
+	Here          int // worker processes on this machine, a block each; 0: none
 	Threads       int
 	IndexBase     matfile.IndexBase
 	Memory        int64         // bytes that may be used; 0: a share of what is free
@@ -107,14 +108,29 @@ type Placed interface {
 	Prepare(ctx context.Context, precondition string, conjugate bool) error
 	// Factors tells what became of the preconditioner, block by block.
 	Factors() []Factor
-	SetRight(b []float64)
-	SetGuess(x []float64)
-	Solution() []float64
+	SetRight(ctx context.Context, b []float64) error
+	SetGuess(ctx context.Context, x []float64) error
+	// Solution returns x in a slice of its own.
+	Solution(ctx context.Context) ([]float64, error)
 	// Workers tells who holds what, with the largest memory so far.
-	Workers() []report.Worker
+	Workers(ctx context.Context) ([]report.Worker, error)
 	// HaloEntries is how many entries of a vector cross borders in a product.
 	HaloEntries() int
 	Close()
+}
+
+// Meter is a Placed whose steps move something between processes.
+type Meter interface {
+	// Moved is what was moved so far.
+	Moved(ctx context.Context) (Moved, error)
+}
+
+// Moved are bytes of whole messages, down and up, and whose halos took the long
+// way.
+type Moved struct {
+	Coordinator int64    // in steps, between the coordinator and all workers
+	Halo        int64    // in steps, between workers
+	Relayed     []string // pairs of workers whose halos go through the coordinator
 }
 
 // InputError is a fault of the files or of what was asked about them.

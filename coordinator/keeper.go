@@ -16,7 +16,7 @@ type keeper struct {
 	every   time.Duration // 0: no snapshots
 	now     func() time.Time
 	last    time.Time
-	save    func() error
+	save    func(ctx context.Context) error
 	failed  error // of the last snapshot
 	longest method.Cycle
 	bytes   int64 // of numbers up and down, all blocks
@@ -76,7 +76,7 @@ func (k *keeper) Keep(ctx context.Context) error {
 		return err
 	}
 	if now := k.now(); k.every > 0 && now.Sub(k.last) >= k.every {
-		k.failed = k.save()
+		k.failed = k.save(ctx)
 		k.last = k.now()
 	}
 	return nil

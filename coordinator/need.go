@@ -20,6 +20,7 @@ type size struct {
 	precondition  string
 	method        string
 	recycle       float64
+	processes     float64 // beside the coordinator's own
 }
 
 // part is one thing that takes memory.
@@ -54,7 +55,7 @@ func (s size) parts(f form) []part {
 	vector := 8 * s.rows
 	matrix := 12*s.entries + 8*s.rows
 	vectors := 6*vector + 3*2*s.rows + 2*vector*s.columns
-	list := []part{{"program", programBytes}, {"matrix", matrix}, {"vectors", vectors}}
+	list := []part{{"program", programBytes * (1 + s.processes)}, {"matrix", matrix}, {"vectors", vectors}}
 	if fill := s.factorEntries(); fill > 0 {
 		list = append(list, part{"preconditioner", 12*fill + 24*s.rows})
 	}

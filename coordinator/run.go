@@ -115,7 +115,7 @@ func (r *runner) budget(head matfile.Header) error {
 	r.most = r.allowed()
 	r.need = size{
 		rows: float64(head.Rows), entries: entries, columns: 1, recycle: recycled,
-		precondition: r.job.Precondition, method: r.job.Method,
+		precondition: r.job.Precondition, method: r.job.Method, processes: float64(r.job.Here),
 	}
 	if err := absurd(head, r.need, r.most); err != nil {
 		return err
@@ -173,6 +173,9 @@ func (r *runner) prepare(ctx context.Context) error {
 func (r *runner) place(ctx context.Context, scale []int16) error {
 	blocks := r.plan.cuts.Blocks()
 	r.chooseBlocks(blocks)
+	if err := r.chooseWorkers(blocks); err != nil {
+		return err
+	}
 	node := 1
 	if r.sys.complex && r.plan.perm == nil {
 		node = 2

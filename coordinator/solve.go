@@ -34,11 +34,7 @@ func (r *runner) solve(ctx context.Context) error {
 	r.leaveRest()
 	r.tellChoices()
 	r.rec.Settle()
-	r.rec.Workers = r.placed.Workers()
-	if r.placed.steps > 0 {
-		r.rec.Traffic.CoordinatorBytesPerStep = report.Number(float64(r.placed.bytes) / float64(r.placed.steps))
-		r.rec.Traffic.HaloBytesPerStep = report.Number(8 * r.placed.HaloEntries())
-	}
+	r.tellWorkers(ctx)
 	if r.placed.failed != nil {
 		r.event(fmt.Sprintf("a snapshot could not be kept: %v", r.placed.failed))
 	}
@@ -64,8 +60,9 @@ func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side
 	// Where no x can meet b, the nearest right side that one can is solved for:
 	// the best answer there is, at the price of a good-natured system.
 	solvable := r.sys.solvable(b, r.job.Tolerance)
-	r.placed.SetRight(r.forward(solvable))
-	r.placed.SetGuess(r.forward(start))
+	if err := r.setSide(ctx, solvable, start); err != nil {
+		return side, err
+	}
 	var last method.Result
 	err := r.timed(&r.rec.Seconds.Solve, func() (err error) {
 		if last, err = r.attempts(ctx, &side); err != nil || last.Met || last.Method != method.CG {
@@ -76,7 +73,9 @@ func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side
 	if err != nil {
 		return side, err
 	}
-	r.placed.SetRight(r.forward(b))
+	if err := r.placed.SetRight(ctx, r.forward(b)); err != nil {
+		return side, err
+	}
 	r.rim.Phase(report.Checking)
 	err = r.timed(&r.rec.Seconds.Check, func() error { return r.check(ctx, last, &side) })
 	r.rim.Phase(report.Stepping)
@@ -90,13 +89,26 @@ func (r *runner) keepBetter(ctx context.Context, start []float64) error {
 	if err != nil {
 		return err
 	}
-	x := r.placed.Solution()
-	r.placed.SetGuess(r.forward(start))
+	x, err := r.placed.Solution(ctx)
+	if err != nil {
+		return err
+	}
+	if err := r.placed.SetGuess(ctx, r.forward(start)); err != nil {
+		return err
+	}
 	before, err := r.placed.Check(ctx)
 	if err == nil && reached.Finite && reached.Inner < before.Inner {
-		r.placed.SetGuess(x)
+		err = r.placed.SetGuess(ctx, x)
 	}
 	return err
+}
+
+// setSide gives the workers a right side and an x to begin with.
+func (r *runner) setSide(ctx context.Context, b, x []float64) error {
+	if err := r.placed.SetRight(ctx, r.forward(b)); err != nil {
+		return err
+	}
+	return r.placed.SetGuess(ctx, r.forward(x))
 }
 
 func nonzero(b []float64) bool {
@@ -274,8 +286,12 @@ func (r *runner) observe(base int, p method.Progress) {
 }
 
 // snapshot keeps all answers so far.
-func (r *runner) snapshot() error {
+func (r *runner) snapshot(ctx context.Context) error {
+	x, err := r.placed.Solution(ctx)
+	if err != nil {
+		return err
+	}
 	all := append([][]float64(nil), r.x...)
-	all[r.column] = r.backward(r.placed.Solution())
+	all[r.column] = r.backward(x)
 	return r.rim.Snapshot(r.column, all)
 }

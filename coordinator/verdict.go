@@ -34,8 +34,11 @@ func (r *runner) check(ctx context.Context, last method.Result, side *report.Sid
 	if side.Verdict == report.Short {
 		r.explain(res, side)
 	}
-	x := r.backward(r.placed.Solution())
-	if finite(x) {
+	x, err := r.placed.Solution(ctx)
+	if err != nil {
+		return err
+	}
+	if x = r.backward(x); finite(x) {
 		r.x[r.column] = x
 	}
 	return nil

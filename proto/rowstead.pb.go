@@ -2118,7 +2118,6 @@ type Hello struct {
 	state         protoimpl.MessageState `protogen:"open.v1"`
 	Version       uint32                 `protobuf:"varint,1,opt,name=version,proto3" json:"version,omitempty"`    // of this contract
 	Neighbour     string                 `protobuf:"bytes,2,opt,name=neighbour,proto3" json:"neighbour,omitempty"` // address at which neighbours reach the worker
-	Process       int64                  `protobuf:"varint,3,opt,name=process,proto3" json:"process,omitempty"`
 	unknownFields protoimpl.UnknownFields
 	sizeCache     protoimpl.SizeCache
 }
@@ -2165,13 +2164,6 @@ func (x *Hello) GetNeighbour() string {
 		return x.Neighbour
 	}
 	return ""
-}
-
-func (x *Hello) GetProcess() int64 {
-	if x != nil {
-		return x.Process
-	}
-	return 0
 }
 
 // Behind brings the sketches of the newest vector: [sketch, hold-out].
@@ -2809,11 +2801,10 @@ const file_rowstead_proto_rawDesc = "" +
 	"\x04held\x18\x0f \x01(\v2\x0e.rowstead.HeldH\x00R\x04held\x12+\n" +
 	"\anumbers\x18\x10 \x01(\v2\x0f.rowstead.EmptyH\x00R\anumbers\x12'\n" +
 	"\x05needs\x18\x11 \x01(\v2\x0f.rowstead.NeedsH\x00R\x05needsB\x06\n" +
-	"\x04what\"Y\n" +
+	"\x04what\"?\n" +
 	"\x05Hello\x12\x18\n" +
 	"\aversion\x18\x01 \x01(\rR\aversion\x12\x1c\n" +
-	"\tneighbour\x18\x02 \x01(\tR\tneighbour\x12\x18\n" +
-	"\aprocess\x18\x03 \x01(\x03R\aprocess\" \n" +
+	"\tneighbour\x18\x02 \x01(\tR\tneighbour\" \n" +
 	"\x06Behind\x12\x16\n" +
 	"\x06vector\x18\x01 \x01(\x03R\x06vector\"\x90\x01\n" +
 	"\x06Failed\x12)\n" +

@@ -13,6 +13,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"rowstead/cmd/internal/place"
 	"rowstead/cmd/internal/replace"
 	"rowstead/coordinator/report"
 )
@@ -36,6 +37,8 @@ type app struct {
 	outputs []string
 	// said is set once the object is printed
 	said bool
+	// office has the worker processes, if there are any
+	office *place.Office
 
 	screen screen
 }
@@ -89,6 +92,9 @@ func wantsJSON(args []string) bool {
 
 // fail prints an error once and returns its status.
 func (a *app) fail(err error) int {
+	if a.interrupt.ending.Load() {
+		select {} // watch ends the program
+	}
 	status := statusOf(err)
 	text := oneLine(err)
 	a.screen.clear()
@@ -161,7 +167,7 @@ func (a *app) commands() *cobra.Command {
 	root.SetHelpFunc(func(c *cobra.Command, _ []string) { showHelp(a.stdout, c) })
 	root.SetHelpCommand(a.helpCommand(root))
 	cobra.EnableCommandSorting = false
-	root.AddCommand(a.solveCommand(), a.auditCommand(), a.sampleCommand(), a.runsCommand(), a.showCommand(), a.resumeCommand(), a.versionCommand())
+	root.AddCommand(a.solveCommand(), a.auditCommand(), a.sampleCommand(), a.runsCommand(), a.showCommand(), a.resumeCommand(), a.versionCommand(), a.workerCommand())
 	for _, c := range root.Commands() {
 		c.Flags().SortFlags = false
 		c.DisableFlagsInUseLine = true

@@ -18,6 +18,9 @@ type interrupt struct {
 	// gentle says that something is worth keeping: a run is stepping, or its
 	// answer is being checked and written.
 	gentle atomic.Bool
+	// ending says that the program is being ended: what fails from now on, such as
+	// a run whose workers have been killed, is not told.
+	ending atomic.Bool
 }
 
 // Stop is method.Options.Stop.
@@ -40,6 +43,7 @@ func (a *app) watch(signals <-chan os.Signal, exit func(int)) {
 			fmt.Fprintln(a.stderr, "rowstead: stopping after this step to keep the answer so far; once more ends at once")
 			continue
 		}
+		a.interrupt.ending.Store(true)
 		a.abandon()
 		a.screen.clear()
 		fmt.Fprintln(a.stderr, "rowstead: interrupted; nothing was left half-written")
@@ -53,13 +57,18 @@ func (a *app) watch(signals <-chan os.Signal, exit func(int)) {
 	}
 }
 
-// abandon removes what is half-written: files of our own writer, and the
-// temporary ones beside the outputs, which are named after them.
+// abandon ends worker processes and removes what is half-written: files of our
+// own writer, and the temporary ones beside the outputs, which are named after
+// them.
 func (a *app) abandon() {
 	a.pending.Abandon()
 	a.mu.Lock()
 	outputs := append([]string(nil), a.outputs...)
+	office := a.office
 	a.mu.Unlock()
+	if office != nil {
+		office.Kill()
+	}
 	for _, path := range outputs {
 		parts, err := filepath.Glob(escape(path) + ".????????.part")
 		if err != nil {

@@ -11,7 +11,6 @@ import (
 	"time"
 
 	"rowstead/cmd/internal/memory"
-	"rowstead/cmd/internal/place"
 	"rowstead/cmd/internal/records"
 	"rowstead/cmd/internal/replace"
 	"rowstead/coordinator"
@@ -72,7 +71,7 @@ func (a *app) hold(rec *report.Record, outputs ...string) {
 // rim is what the coordinator may ask of this program.
 func (a *app) rim(s *session) coordinator.Rim {
 	return coordinator.Rim{
-		Place: place.InProcess,
+		Place: a.placer(s.flags.job.Here),
 		Now:   time.Now,
 		FreeMemory: func() (int64, error) {
 			state, err := memory.Now()

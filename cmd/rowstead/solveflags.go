@@ -64,6 +64,9 @@ const (
 	defaultSnapshot  = 5 * time.Minute
 )
 
+// mostHere is how many worker processes one machine is asked for at most.
+const mostHere = 256
+
 // add declares the flags in the order in which the help lists them.
 func (s *solveFlags) add(f *pflag.FlagSet) {
 	j := &s.job
@@ -80,6 +83,7 @@ func (s *solveFlags) add(f *pflag.FlagSet) {
 	f.IntVar(&j.SketchRows, "sketch-rows", 0, "length of a sketch, `COUNT` (four times the cycle)")
 	f.Uint64Var(&j.Seed, "seed", defaultSeed, "`NUMBER` that every random choice follows from (1)")
 	f.IntVar(&j.Blocks, "blocks", 0, "cut the rows into `COUNT` blocks (1)")
+	f.IntVar(&j.Here, "here", 0, "hold the blocks in `COUNT` worker processes on this machine, one each (none)")
 	f.StringVar(&j.Cuts, "cuts", "", "take the first rows of the blocks from `FILE`")
 	f.StringVar(&j.Basis, "basis", "auto", "keep the basis as `KIND`: auto, double, single or replay")
 	f.Var(bytesValue{&j.Memory}, "memory", "use at most this `SIZE`, such as 6GB or 500MiB (70 % of what is free)")
@@ -110,16 +114,21 @@ func (s *solveFlags) check(f *pflag.FlagSet) error {
 	fault(!among(j.Precondition, "auto", "none", "diagonal", "ilu0", "ilut"), "--precondition %q: expected auto, none, diagonal, ilu0 or ilut", j.Precondition)
 	fault(!among(j.Method, method.Auto, method.Sketched, method.Orthogonal, method.CG), "--method %q: expected auto, sketched, orthogonal or cg", j.Method)
 	fault(!among(j.Basis, "auto", "double", "single", "replay"), "--basis %q: expected auto, double, single or replay", j.Basis)
-	for name, value := range map[string]int{"window": j.Window, "cycle": j.Cycle, "sketch-rows": j.SketchRows, "blocks": j.Blocks, "threads": j.Threads} {
+	for name, value := range map[string]int{"window": j.Window, "cycle": j.Cycle, "sketch-rows": j.SketchRows, "blocks": j.Blocks, "here": j.Here, "threads": j.Threads} {
 		fault(f.Changed(name) && value < 1, "--%s %d: expected a whole number from 1", name, value)
 	}
 	fault(j.Basis == "replay" && j.Method == method.Orthogonal, "--basis replay has window steps alone; take --method sketched with it")
+	fault(j.Here > mostHere, "--here %d: expected at most %d worker processes", j.Here, mostHere)
+	fault(j.Here > 0 && j.Blocks > 0, "--here and --blocks both say how many blocks there are; give one")
 	fault(j.Blocks > 0 && j.Cuts != "", "--blocks and --cuts both say where blocks begin; give one")
 	fault(j.Trial && j.Right != "", "--trial makes its own right side; leave %s out", j.Right)
 	var err error
 	j.IndexBase, err = base(s.indexBase, f.Changed("index-base"))
 	fault(err != nil, "%v", err)
 	if len(faults) == 0 {
+		if j.Here > 0 && j.Cuts == "" {
+			j.Blocks = j.Here
+		}
 		return nil
 	}
 	sort.Strings(faults)

@@ -9,6 +9,8 @@ import (
 	"sync/atomic"
 	"time"
 
+	"google.golang.org/grpc/status"
+
 	"rowstead/proto/frame"
 )
 
@@ -76,6 +78,9 @@ func NewPipe(stream Stream, beat []byte, handle func(Message) error) *Pipe {
 
 // Ended is closed when the pipe has ended; Err then says why.
 func (p *Pipe) Ended() <-chan struct{} { return p.ended.Done() }
+
+// Over is a context that is done when the pipe has ended.
+func (p *Pipe) Over() context.Context { return p.ended }
 
 // Err says why the pipe has ended, nil while it has not.
 func (p *Pipe) Err() error { return context.Cause(p.ended) }
@@ -210,7 +215,7 @@ func (p *Pipe) receive(handle func(Message) error) error {
 			if errors.Is(err, io.EOF) {
 				return ErrEnded
 			}
-			return fmt.Errorf("%w: %w", ErrEnded, err)
+			return fmt.Errorf("%w: %s", ErrEnded, status.Convert(err).Message())
 		}
 		p.heard.Store(int64(time.Since(p.begun)))
 		if len(m.Floats)+len(m.Ints)+r.Floats+r.Ints > MaxMessage {

@@ -12,7 +12,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"os"
 
 	"google.golang.org/grpc"
 	protobuf "google.golang.org/protobuf/proto"
@@ -34,6 +33,9 @@ type Options struct {
 	// Free returns how many bytes could be used; an error: unknown, nothing is
 	// refused.
 	Free func() (int64, error)
+	// Lost, if not nil, is called when the connection to the coordinator has ended
+	// or the coordinator has said goodbye; a verb may still be in work then.
+	Lost func()
 }
 
 // session is one stay in one run.
@@ -92,7 +94,11 @@ func Run(ctx context.Context, permit *proto.Permit, o Options) error {
 	s.pipe = link.NewPipe(stream, encode(&proto.Reply{What: &proto.Reply_Beat{Beat: &proto.Beat{}}}), s.handle)
 	defer s.pipe.Wait()
 	defer cancel()
-	hello := &proto.Hello{Version: proto.Version, Neighbour: server.Address, Process: int64(os.Getpid())}
+	if o.Lost != nil {
+		stop := context.AfterFunc(s.pipe.Over(), o.Lost)
+		defer stop()
+	}
+	hello := &proto.Hello{Version: proto.Version, Neighbour: server.Address}
 	s.send(&proto.Reply{What: &proto.Reply_Hello{Hello: hello}}, nil) // a failure ends the pipe
 	err = s.serve(ctx)
 	if s.block != nil {

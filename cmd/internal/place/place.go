@@ -1,7 +1,9 @@
-// Package place joins the coordinator to workers in this process: it turns a
-// coordinator.Placement into blocks and back.
+// Package place joins the coordinator to workers, in this process or in others of
+// this machine: it turns a coordinator.Placement into blocks and back.
 //
-// A Placed is used by one goroutine and must be closed.
+// Its nouns are the two makers of a coordinator.Placed, InProcess and an Office
+// of worker processes, which it starts, watches and ends. A Placed is used by one
+// goroutine and must be closed.
 package place
 
 import (
@@ -50,8 +52,25 @@ func (s *inProcess) Factors() []coordinator.Factor {
 	return out
 }
 
+// SetRight replaces b.
+func (s *inProcess) SetRight(_ context.Context, b []float64) error {
+	s.Space.SetRight(b)
+	return nil
+}
+
+// SetGuess replaces x.
+func (s *inProcess) SetGuess(_ context.Context, x []float64) error {
+	s.Space.SetGuess(x)
+	return nil
+}
+
+// Solution returns x.
+func (s *inProcess) Solution(context.Context) ([]float64, error) {
+	return s.Space.Solution(), nil
+}
+
 // Workers tells who holds what.
-func (s *inProcess) Workers() []report.Worker {
+func (s *inProcess) Workers(context.Context) ([]report.Worker, error) {
 	memory, entries := s.Memory(), s.Entries()
 	out := make([]report.Worker, len(memory))
 	for k := range out {
@@ -60,13 +79,15 @@ func (s *inProcess) Workers() []report.Worker {
 			Entries: entries[k], PeakBytes: memory[k].Total(),
 		}
 	}
-	return out
+	return out, nil
 }
 
 // HaloEntries is how many entries of a vector cross borders in a product.
-func (s *inProcess) HaloEntries() int {
+func (s *inProcess) HaloEntries() int { return total(s.Space.HaloEntries()) }
+
+func total(counts []int) int {
 	sum := 0
-	for _, n := range s.Space.HaloEntries() {
+	for _, n := range counts {
 		sum += n
 	}
 	return sum

@@ -114,7 +114,7 @@ func (h *Hub) Serve(stream grpc.BidiStreamingServer[proto.Reply, proto.Order]) e
 	select {
 	case hello := <-w.greeted:
 		timer.Stop()
-		w.neighbour, w.process = hello.Neighbour, int(hello.Process)
+		w.neighbour = hello.Neighbour
 		arrived <- w
 	case <-w.pipe.Ended():
 		return status.Error(codes.Aborted, w.pipe.Err().Error())
@@ -144,11 +144,15 @@ func (h *Hub) Close() {
 	h.mu.Lock()
 	workers := append([]*Worker(nil), h.workers...)
 	h.mu.Unlock()
+	patience := time.NewTimer(2 * link.Beat)
+	defer patience.Stop()
 	for _, w := range workers {
 		select {
 		case <-w.pipe.Ended():
-		case <-time.After(2 * link.Beat):
+			continue
+		case <-patience.C: // for all of them
 		}
+		break
 	}
 	h.server.Stop()
 	for _, w := range workers {

@@ -152,9 +152,6 @@ func (s *Space) HaloEntries() []int { return s.received }
 // neither could reach the other.
 func (s *Space) Relayed() []Pair { return s.relayed }
 
-// Workers returns the workers, block by block.
-func (s *Space) Workers() []*Worker { return s.workers }
-
 // Held asks what the workers hold and have moved.
 func (s *Space) Held(ctx context.Context) ([]*proto.Held, error) {
 	held := make([]*proto.Held, len(s.workers))

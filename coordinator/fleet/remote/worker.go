@@ -20,7 +20,6 @@ import (
 type Worker struct {
 	name      string
 	neighbour string // where its neighbours reach it
-	process   int
 	pipe      *link.Pipe
 	greeted   chan *proto.Hello
 	explain   func() string // why its connection may have ended
@@ -56,9 +55,6 @@ func newWorker(name string, stream link.Stream) *Worker {
 
 // Name is how people know the worker.
 func (w *Worker) Name() string { return w.name }
-
-// Process is the number of the worker's process on its machine.
-func (w *Worker) Process() int { return w.process }
 
 // Explain sets what is asked when the connection has ended: a text that says why,
 // or "". It is set before the worker is placed.
@@ -162,10 +158,19 @@ func (w *Worker) broken(err error) error {
 	case <-time.After(link.Beat):
 	}
 	if why := w.explain(); why != "" {
-		return fmt.Errorf("%s: %w", why, err)
+		return &explained{why, err}
 	}
 	return err
 }
+
+// explained is the failure of a connection of which more is known.
+type explained struct {
+	why string
+	err error
+}
+
+func (e *explained) Error() string { return e.why }
+func (e *explained) Unwrap() error { return e.err }
 
 // failure makes an error of what the worker said. When a neighbour of it went
 // away, the neighbour's own connection tells more: its error cancels ctx.
