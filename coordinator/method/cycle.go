@@ -3,6 +3,7 @@ package method
 import (
 	"context"
 	"math"
+	"slices"
 )
 
 // Ends of a cycle.
@@ -136,8 +137,8 @@ func (c *cycle) ask(step *Step) {
 // coefficients decides how b_{j+1} follows from w.
 func (c *cycle) coefficients(ctx context.Context, reply Stepped) (column, error) {
 	col := column{ww: reply.WW}
-	if c.conf.Form == Single {
-		col.sketchW, col.holdW = reply.SketchW, reply.HoldW
+	if c.conf.Form == Single { // the answer's slices last until the next verb
+		col.sketchW, col.holdW = slices.Clone(reply.SketchW), slices.Clone(reply.HoldW)
 	}
 	switch {
 	case len(reply.Dots) == 0: // a full step
@@ -146,11 +147,12 @@ func (c *cycle) coefficients(ctx context.Context, reply Stepped) (column, error)
 		}
 		col.h, col.norm = c.run.small.fullStep(reply.SketchW)
 	case c.run.ladder.mode == classicalMode:
-		again, ww, err := c.run.sp.Reduce(ctx, reply.Dots)
+		first := slices.Clone(reply.Dots)
+		again, ww, err := c.run.sp.Reduce(ctx, first)
 		if err != nil {
 			return col, err
 		}
-		col.sent, col.h, col.norm = again, reply.Dots, ww
+		col.sent, col.h, col.norm = slices.Clone(again), first, ww
 		for i, v := range again {
 			col.h[i] += v
 			col.norm -= float64(v * v)

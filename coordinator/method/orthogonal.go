@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"rowstead/coordinator/small"
 )
@@ -82,13 +83,14 @@ func (r *run) orthogonalCycle(ctx context.Context, conf Cycle) error {
 		if err != nil {
 			return err
 		}
-		again, ww, err := r.sp.Reduce(ctx, reply.Dots)
+		first := slices.Clone(reply.Dots) // the answer's slices last until the next verb
+		again, ww, err := r.sp.Reduce(ctx, first)
 		if err != nil {
 			return err
 		}
 		r.res.Products++
 		r.res.Steps++
-		column, norm := orthogonalColumn(reply.Dots, again, ww)
+		column, norm := orthogonalColumn(first, again, ww)
 		if !finite(norm) {
 			return r.orthogonalCorrect(ctx, ls, "not finite")
 		}
@@ -117,7 +119,7 @@ func (r *run) orthogonalCycle(ctx context.Context, conf Cycle) error {
 			}
 			aim = min(0.7*aim, 0.8*ls.Estimate()/got.excess(r.o.Tolerance))
 		}
-		next = Step{H: again, Norm: norm}
+		next = Step{H: slices.Clone(again), Norm: norm}
 	}
 }
 
