@@ -153,8 +153,8 @@ func boeingText(n, w int) string {
 func stencilArchive(n, w int) map[string][2]string {
 	var starts, indices []int32
 	var values []float64
-	band(n, w, func(i, j int, v float64) {
-		if i = len(values) % w; i == 0 {
+	band(n, w, func(_, j int, v float64) {
+		if len(values)%w == 0 {
 			starts = append(starts, int32(len(values)))
 		}
 		indices, values = append(indices, int32(j)), append(values, v)

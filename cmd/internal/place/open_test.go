@@ -33,6 +33,9 @@ var open = []struct {
 // and an audit from the files by its own path that confirms it.
 func TestOpenMatrices(t *testing.T) {
 	for _, o := range open {
+		if testing.Short() && o.file == "uscounties.mtx" {
+			continue // thousands of products
+		}
 		for _, kind := range []string{coordinator.Auto, "sketched"} {
 			t.Run(o.file+" "+kind, func(t *testing.T) {
 				right := rightSide(t, matrices+o.file)

@@ -1,8 +1,8 @@
 // Command gen writes the assembly of packages kernel and sketch for amd64.
 //
 // It is a module of its own, so that the program itself does not depend on the
-// generator. Each set of routines is one .s file and its Go stubs; the
-// go:generate lines that call it stand beside the Go twins:
+// generator. Each set of routines is one .s file and its Go stubs; the lines for
+// go generate that call it stand beside the Go twins:
 //
 //	go run . -set vectors -pkg kernel -out ../vectors_amd64.s -stubs ../vectors_amd64.go
 //
