@@ -22,7 +22,6 @@ func TestHoldOutFlagsALie(t *testing.T) {
 
 	shifts := leja(40, 0, 8)
 	basis := [][]float64{unit(problems.NormalVector(n, 5))}
-	var columns []column
 	take := func(b []float64, c []column) {
 		sb, hold := make([]float64, rows), make([]float64, HoldRows)
 		s.Add(sb, b, 0)
@@ -37,7 +36,6 @@ func TestHoldOutFlagsALie(t *testing.T) {
 		theta := shifts[j%len(shifts)]
 		addScaled(w, basis[j], -theta)
 		c := column{lo: j, h: []float64{theta}, norm: norm2(w)}
-		columns = append(columns, c)
 		basis = append(basis, unit(w))
 		take(basis[j+1], []column{c})
 		if (j+1)%smallPanel == 0 {

@@ -27,7 +27,6 @@ type Worker struct {
 	block  int       // set when it is placed
 	lo, hi int       // its rows
 	peers  []*Worker // all workers by block, for relays
-	width  int       // floats of both sketches of a vector in this cycle; 0: none
 	recent recent
 
 	mu      sync.Mutex
