@@ -22,7 +22,7 @@ const (
 )
 
 // MaxMessage bounds the numbers of one message, all its frames together.
-const MaxMessage = 1 << 26
+const MaxMessage = 1 << 24
 
 // behindMost is how many messages may wait behind; then SendBehind waits.
 const behindMost = 64
@@ -181,6 +181,9 @@ func (p *Pipe) Flush() error {
 }
 
 func (p *Pipe) queue(m behind) error {
+	if err := p.Err(); err != nil {
+		return err
+	}
 	select {
 	case p.behind <- m:
 		return nil
