@@ -85,7 +85,7 @@ func (s *session) place(o *proto.Place) error {
 func (s *session) fits(need float64) error {
 	free, err := s.options.Free()
 	if err == nil && need > float64(free) {
-		return fmt.Errorf("its rows take %.0f bytes, %d are free on its machine", need, free)
+		return fmt.Errorf("%.0f bytes more are needed, %d are free on its machine", need, free)
 	}
 	return nil
 }

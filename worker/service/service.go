@@ -53,6 +53,7 @@ type session struct {
 	cycle    worker.Cycle // the last one started
 	vectors  int          // of it so far
 	solution []float64    // x while it is fetched
+	room     float64      // bytes of the largest cycle so far
 }
 
 // order is an order with its numbers.

@@ -5,6 +5,7 @@ import (
 
 	"rowstead/proto"
 	"rowstead/worker"
+	"rowstead/worker/basis"
 )
 
 // answer parts: the control part and the numbers of a reply.
@@ -61,6 +62,9 @@ func (s *session) carryOut(ctx context.Context, o order) (reply, ints, floats, e
 		r, err := s.block.Sketches(ctx, int(what.Sketches.From), int(what.Sketches.To))
 		return numbers(), nil, floats{r.Sketch, r.Hold}, err
 	case *proto.Order_Recycle:
+		if err := s.roomFor(what.Recycle); err != nil {
+			return nil, nil, nil, err
+		}
 		r, err := s.block.Recycle(ctx, cycle(what.Recycle))
 		return numbers(), nil, floats{r.SU, r.SAZ, r.HoldAZ}, err
 	case *proto.Order_Keep:
@@ -77,6 +81,9 @@ func (s *session) residual(ctx context.Context, o order) (reply, ints, floats, e
 	var err error
 	switch what := o.What.(type) {
 	case *proto.Order_Start:
+		if err = s.roomFor(what.Start); err != nil {
+			break
+		}
 		if r, err = s.block.Start(ctx, cycle(what.Start)); err == nil {
 			s.cycle, s.vectors = cycle(what.Start), 0
 		}
@@ -90,6 +97,9 @@ func (s *session) residual(ctx context.Context, o order) (reply, ints, floats, e
 		}
 		var c worker.Correction
 		if c, err = correction(form, o.floats); err == nil {
+			err = s.fits(3 * 8 * float64(s.plan.Rows) * float64(c.Directions))
+		}
+		if err == nil {
 			r, err = verb(ctx, c)
 		}
 	default:
@@ -155,6 +165,30 @@ func (s *session) conjugate(ctx context.Context, o order) (reply, ints, floats, 
 
 func pair(p worker.PairSums) floats { return floats{p.First[:], p.Second[:]} }
 
+// mostVectors bounds the lengths of a cycle.
+const mostVectors = 1 << 20
+
+// roomFor returns an error unless the basis and the sketches of c fit what is free
+// beside those of the largest cycle so far.
+func (s *session) roomFor(c *proto.Cycle) error {
+	if c.Capacity > mostVectors || c.Window > c.Capacity+mostVectors || c.SketchRows > mostVectors*64 || c.SketchRows < 0 {
+		return senseless("a cycle of %d vectors, window %d, with %d sketch rows", c.Capacity, c.Window, c.SketchRows)
+	}
+	vector, kept := 8*float64(s.plan.Rows), float64(c.Capacity)
+	switch c.Form {
+	case basis.Single:
+		vector /= 2
+	case basis.Replay:
+		kept = min(kept, float64(c.Window)+4)
+	}
+	need := vector*kept + 8*float64(c.Capacity)*float64(c.SketchRows+worker.HoldRows)
+	if err := s.fits(need - s.room); err != nil {
+		return err
+	}
+	s.room = max(s.room, need)
+	return nil
+}
+
 func cycle(c *proto.Cycle) worker.Cycle {
 	return worker.Cycle{
 		Seed: c.Seed, SketchRows: int(c.SketchRows), Zeta: int(c.Zeta),
@@ -166,7 +200,7 @@ func cycle(c *proto.Cycle) worker.Cycle {
 // is the block's to say.
 func correction(c *proto.Correction, numbers []float64) (worker.Correction, error) {
 	most := int64(len(numbers))
-	if c.Y < 0 || c.Yu < 0 || c.Directions < 0 || c.Y > most || c.Yu > most-c.Y {
+	if c.Y < 0 || c.Yu < 0 || c.Directions < 0 || c.Directions > mostVectors || c.Y > most || c.Yu > most-c.Y {
 		return worker.Correction{}, senseless("a correction of %d, %d and %d directions with %d numbers", c.Y, c.Yu, c.Directions, most)
 	}
 	width := c.Y + c.Yu
