@@ -32,6 +32,9 @@ const (
 	maxHeaderList = 8 << 10
 	// maxStreams bounds the calls on one connection: a party makes one.
 	maxStreams = 4
+	// window is how much may be on its way to a party that has not read it, in bytes:
+	// a whole frame, so that none waits half-sent.
+	window = 1 << 20
 )
 
 // Server listens for the calls of a run.
@@ -53,7 +56,8 @@ func Listen(address string, id keys.Identity, register func(grpc.ServiceRegistra
 		return nil, fmt.Errorf("listen: %w", err)
 	}
 	server := grpc.NewServer(
-		grpc.Creds(credentials.NewTLS(config)),
+		grpc.Creds(gathering{credentials.NewTLS(config)}), grpc.WriteBufferSize(writeBuffer),
+		grpc.InitialWindowSize(window), grpc.InitialConnWindowSize(window),
 		grpc.ForceServerCodecV2(&frame.Codec{}),
 		grpc.MaxRecvMsgSize(frame.MaxBytes), grpc.MaxSendMsgSize(frame.MaxBytes),
 		grpc.MaxHeaderListSize(maxHeaderList), grpc.MaxConcurrentStreams(maxStreams),
@@ -83,7 +87,8 @@ func Dial(address, name string, id keys.Identity) (*grpc.ClientConn, error) {
 	}
 	codec := &frame.Codec{}
 	conn, err := grpc.NewClient("passthrough:///"+address,
-		grpc.WithTransportCredentials(credentials.NewTLS(config)),
+		grpc.WithTransportCredentials(gathering{credentials.NewTLS(config)}), grpc.WithWriteBufferSize(writeBuffer),
+		grpc.WithInitialWindowSize(window), grpc.WithInitialConnWindowSize(window),
 		grpc.WithDefaultCallOptions(grpc.ForceCodecV2(codec), grpc.MaxCallRecvMsgSize(frame.MaxBytes), grpc.MaxCallSendMsgSize(frame.MaxBytes)),
 		grpc.WithMaxHeaderListSize(maxHeaderList),
 		grpc.WithConnectParams(grpc.ConnectParams{Backoff: backoff.DefaultConfig, MinConnectTimeout: HandshakeTime}),

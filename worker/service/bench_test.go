@@ -2,6 +2,7 @@ package service
 
 import (
 	"context"
+	"crypto/tls"
 	"fmt"
 	"io"
 	"net"
@@ -59,7 +60,7 @@ func ring(t testing.TB, count, entries int) []*exchange {
 	return all
 }
 
-// rounds runs a party for every member of the ring that many times and returns
+// timed runs a party for every member of the ring that many times and returns
 // the time of one round.
 func timed(b *testing.B, count int, party func(k, times int) error) time.Duration {
 	b.Helper()
@@ -106,12 +107,14 @@ func rawRing(b *testing.B, count int) (after, before []net.Conn) {
 }
 
 // A halo round of a ring of four with 80 KiB to each neighbour, beside plain TCP
-// with the same bytes in the same run. Metrics are the time of each and their
-// ratio, from interleaved batches, the smallest of each kind.
+// and TLS over TCP with the same bytes in the same run. Metrics are the time of
+// each and the ratios, from interleaved batches, the smallest of each kind.
 func BenchmarkHaloRound(b *testing.B) {
 	const count, entries = 4, 10 << 10
 	all := ring(b, count, entries)
 	after, before := rawRing(b, count)
+	safeAfter, safeBefore := rawRing(b, count)
+	secure(b, all, safeAfter, safeBefore)
 	ctx := context.Background()
 	wire := func(k, times int) error {
 		x, next, last := all[k], (k+1)%count, (k+count-1)%count
@@ -130,7 +133,7 @@ func BenchmarkHaloRound(b *testing.B) {
 		}
 		return nil
 	}
-	raw := func(k, times int) error {
+	plain := func(after, before []net.Conn, k, times int) error {
 		out, in := make([]byte, 8*entries), make([]byte, 8*entries)
 		for range times {
 			for _, c := range []net.Conn{after[k], before[k]} {
@@ -146,13 +149,44 @@ func BenchmarkHaloRound(b *testing.B) {
 		}
 		return nil
 	}
-	least := [2]time.Duration{time.Hour, time.Hour}
+	tcp := func(k, times int) error { return plain(after, before, k, times) }
+	safe := func(k, times int) error { return plain(safeAfter, safeBefore, k, times) }
+	least := [3]time.Duration{time.Hour, time.Hour, time.Hour}
 	b.SetBytes(2 * count * 8 * entries)
 	for b.Loop() {
-		least[0] = min(least[0], timed(b, count, wire))
-		least[1] = min(least[1], timed(b, count, raw))
+		for i, party := range []func(k, times int) error{wire, tcp, safe} {
+			least[i] = min(least[i], timed(b, count, party))
+		}
 	}
 	b.ReportMetric(float64(least[0].Microseconds()), "us/wire-round")
 	b.ReportMetric(float64(least[1].Microseconds()), "us/tcp-round")
+	b.ReportMetric(float64(least[2].Microseconds()), "us/tls-round")
 	b.ReportMetric(float64(least[0])/float64(least[1]), "wire/tcp")
+	b.ReportMetric(float64(least[0])/float64(least[2]), "wire/tls")
+}
+
+// secure puts TLS, as links have it, over the connections of a ring.
+func secure(b *testing.B, all []*exchange, after, before []net.Conn) {
+	b.Helper()
+	for k := range after {
+		next := (k + 1) % len(after)
+		client, err := all[k].s.identity.Client(fmt.Sprintf("worker-%d", next))
+		if err != nil {
+			b.Fatal(err)
+		}
+		server, err := all[next].s.identity.Server()
+		if err != nil {
+			b.Fatal(err)
+		}
+		c, s := tls.Client(after[k], client), tls.Server(before[next], server)
+		shaken := make(chan error, 1)
+		go func() { shaken <- s.Handshake() }()
+		if err := c.Handshake(); err != nil {
+			b.Fatal(err)
+		}
+		if err := <-shaken; err != nil {
+			b.Fatal(err)
+		}
+		after[k], before[next] = c, s
+	}
 }
