@@ -3,6 +3,7 @@ package coordinator
 import (
 	"fmt"
 	"math"
+	"os"
 	"path/filepath"
 	"strings"
 
@@ -19,6 +20,50 @@ func ShortName(path string) string {
 		ending = filepath.Ext(strings.TrimSuffix(name, ending)) + ending
 	}
 	return folder + strings.TrimSuffix(name, ending) + ".short" + ending
+}
+
+// mostNames is how many short answers may lie beside each other.
+const mostNames = 10000
+
+// shortPlace is where a short answer goes and whether it replaces what is there:
+// the run's own earlier one, else the first of x.short.mtx, x.short-2.mtx, ...
+// that does not exist, unless existing files are to be replaced.
+func (r *runner) shortPlace() (path string, overwrite bool) {
+	first := ShortName(r.job.Out)
+	if r.job.Overwrite {
+		return first, true
+	}
+	free := ""
+	for n := 1; n < mostNames; n++ {
+		path := numbered(first, n)
+		if own := r.job.OwnShort; own != "" && filepath.Clean(path) == filepath.Clean(own) {
+			return path, true
+		}
+		if _, err := os.Lstat(path); err != nil {
+			if free == "" {
+				free = path
+			}
+			if r.job.OwnShort == "" || n > 100 {
+				break
+			}
+		}
+	}
+	if free == "" {
+		return first, false
+	}
+	if free != first {
+		r.rec.AnswerNote = fmt.Sprintf("%s was there already and stays as it was", first)
+	}
+	return free, false
+}
+
+// numbered puts "-n" behind ".short" in a name, from 2.
+func numbered(short string, n int) string {
+	if n < 2 {
+		return short
+	}
+	at := strings.LastIndex(short, ".short") + len(".short")
+	return fmt.Sprintf("%s-%d%s", short[:at], n, short[at:])
 }
 
 // finish writes the answer and keeps a snapshot of one that can be carried on.
@@ -48,7 +93,7 @@ func (r *runner) done() int {
 func (r *runner) write() error {
 	path, overwrite := r.job.Out, r.job.Overwrite
 	if r.rec.Verdict != report.Met {
-		path, overwrite = ShortName(path), overwrite || r.job.OwnShort
+		path, overwrite = r.shortPlace()
 	}
 	d := &matfile.Dense{Rows: len(r.x[0]), Cols: len(r.x), Complex: r.sys.complex, Values: make([]float64, 0, len(r.x)*len(r.x[0]))}
 	for _, x := range r.x {
@@ -110,4 +155,5 @@ func (s *system) findTrouble() {
 		}
 	}
 	s.balanced = columnsBalance(s.matrix)
+	s.free = s.balanced && columnsBalance(s.matrix.Transpose())
 }

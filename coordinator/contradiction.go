@@ -52,6 +52,14 @@ func (s *system) solvable(b []float64, tolerance float64) []float64 {
 	return out
 }
 
+// tellUnique records where x is not the only answer: when rows and columns sum
+// to zero, constants can be added to it, as to heads without a fixed one.
+func (r *runner) tellUnique() {
+	if r.sys.balanced && r.sys.free {
+		r.choose("answer", "one of many", "every row and every column sums to zero: x is fixed only up to a constant; fix one value to make it the only one", false)
+	}
+}
+
 // columnsBalance says whether every column of a sums to zero up to rounding,
 // as the balances of a closed system do.
 func columnsBalance(a *csr.Matrix) bool {

@@ -23,8 +23,8 @@ type system struct {
 	complex bool
 	real    bool  // the right side came as a real one
 	empty   []int // rows without a nonzero entry
-	// balanced says that every column sums to zero.
-	balanced bool
+	// balanced says that every column sums to zero, free that every row does too.
+	balanced, free bool
 }
 
 // look reads the matrix's header and refuses what cannot be solved, before any
@@ -47,6 +47,29 @@ func look(j Job) (matfile.Header, error) {
 		return head, &InputError{"there is no right side: write rowstead solve A.mtx b.mtx, or --trial for b = A·(1, …, 1)"}
 	}
 	return head, nil
+}
+
+// Inspect reads the headers of the inputs, without taking memory for them, and
+// tells what is wrong with them.
+func Inspect(j Job) error {
+	if _, err := look(j); err != nil {
+		return err
+	}
+	for _, path := range []string{j.Right, j.Guess, j.Cuts} {
+		if path == "" {
+			continue
+		}
+		f, err := os.Open(path)
+		if err != nil {
+			return reading(path, err)
+		}
+		status, err := f.Stat()
+		f.Close() // read only
+		if err == nil && status.IsDir() {
+			return &InputError{path + ": it is a folder, not a file"}
+		}
+	}
+	return nil
 }
 
 // harwellBoeing is the format whose files may carry their own right sides.

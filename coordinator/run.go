@@ -23,6 +23,8 @@ type runner struct {
 	begun  time.Time
 	pace   report.Pace
 	column int         // the right side in work
+	scale  []int16     // e of the row scaling 2^e, in the order of the file
+	shift  int         // b and x of the workers are those of the file times 2^shift
 	x      [][]float64 // answers, in the order and units of the file
 	before int         // products of earlier right sides
 	need   size        // of memory, as the header tells
@@ -159,6 +161,13 @@ func (r *runner) prepare(ctx context.Context) error {
 			return err
 		}
 		scale = order.RowScale(r.sys.matrix)
+		r.scale = scale
+		if r.plan.perm != nil {
+			r.scale = make([]int16, len(scale))
+			for i, at := range r.plan.perm {
+				r.scale[at] = scale[i]
+			}
+		}
 		r.rec.Cuts = r.plan.cuts.Starts()
 		return ctx.Err()
 	})

@@ -33,6 +33,7 @@ func (r *runner) solve(ctx context.Context) error {
 	}
 	r.leaveRest()
 	r.tellChoices()
+	r.tellUnique()
 	r.rec.Settle()
 	r.tellWorkers(ctx)
 	if r.placed.failed != nil {
@@ -57,23 +58,28 @@ func (r *runner) solveSide(ctx context.Context, c int, b []float64) (report.Side
 	if !nonzero(b) {
 		start = make([]float64, len(b)) // A·x = 0: x = 0 is the answer
 	}
+	r.shift = shiftOf(b, r.scale)
+	if row := tooFarApart(b, r.scale, r.shift); row >= 0 {
+		return side, r.apart(row)
+	}
 	// Where no x can meet b, the nearest right side that one can is solved for:
 	// the best answer there is, at the price of a good-natured system.
 	solvable := r.sys.solvable(b, r.job.Tolerance)
-	if err := r.setSide(ctx, solvable, start); err != nil {
+	start, err := r.setSide(ctx, solvable, start)
+	if err != nil {
 		return side, err
 	}
 	var last method.Result
-	err := r.timed(&r.rec.Seconds.Solve, func() (err error) {
-		if last, err = r.attempts(ctx, &side); err != nil || last.Met || last.Method != method.CG {
+	err = r.timed(&r.rec.Seconds.Solve, func() (err error) {
+		if last, err = r.attempts(ctx, start, &side); err != nil {
 			return err
 		}
-		return r.keepBetter(ctx, start)
+		return r.probe(ctx, &last, &side)
 	})
 	if err != nil {
 		return side, err
 	}
-	if err := r.placed.SetRight(ctx, r.forward(b)); err != nil {
+	if err := r.setRight(ctx, b); err != nil {
 		return side, err
 	}
 	r.rim.Phase(report.Checking)
@@ -93,7 +99,7 @@ func (r *runner) keepBetter(ctx context.Context, start []float64) error {
 	if err != nil {
 		return err
 	}
-	if err := r.placed.SetGuess(ctx, r.forward(start)); err != nil {
+	if err := r.setGuess(ctx, start); err != nil {
 		return err
 	}
 	before, err := r.placed.Check(ctx)
@@ -103,12 +109,45 @@ func (r *runner) keepBetter(ctx context.Context, start []float64) error {
 	return err
 }
 
-// setSide gives the workers a right side and an x to begin with.
-func (r *runner) setSide(ctx context.Context, b, x []float64) error {
-	if err := r.placed.SetRight(ctx, r.forward(b)); err != nil {
-		return err
+// setSide places a right side and the x to begin with; a guess that is worse
+// than x = 0 is dropped. It returns the x that stands.
+func (r *runner) setSide(ctx context.Context, b, x []float64) ([]float64, error) {
+	if err := r.setRight(ctx, b); err != nil {
+		return x, err
 	}
+	if err := r.setGuess(ctx, x); err != nil || !nonzero(x) {
+		return x, err
+	}
+	res, err := r.placed.Check(ctx)
+	if err != nil || res.Finite && res.Inner <= res.InnerRight {
+		return x, err
+	}
+	r.event("the guess is worse than x = 0 and was dropped")
+	x = make([]float64, len(x))
+	return x, r.setGuess(ctx, x)
+}
+
+// setRight places b, shifted into the middle of the range of numbers.
+func (r *runner) setRight(ctx context.Context, b []float64) error {
+	b, _ = shifted(b, r.shift)
+	return r.placed.SetRight(ctx, r.forward(b))
+}
+
+// setGuess places x, shifted as b is.
+func (r *runner) setGuess(ctx context.Context, x []float64) error {
+	x, _ = shifted(x, r.shift)
 	return r.placed.SetGuess(ctx, r.forward(x))
+}
+
+// answer is the x of the workers in the order and the units of the file, and
+// whether 64-bit numbers hold it.
+func (r *runner) answer(ctx context.Context) (x []float64, exact bool, err error) {
+	x, err = r.placed.Solution(ctx)
+	if err != nil {
+		return nil, false, err
+	}
+	x, exact = shifted(r.backward(x), -r.shift)
+	return x, exact, nil
 }
 
 func nonzero(b []float64) bool {
@@ -123,8 +162,11 @@ func nonzero(b []float64) bool {
 // attempts runs the method, another one where conjugate gradients cannot go on,
 // and a last, harder try where a run that was getting somewhere stands still.
 // Every try begins from the x of the one before.
-func (r *runner) attempts(ctx context.Context, side *report.Side) (method.Result, error) {
+func (r *runner) attempts(ctx context.Context, start []float64, side *report.Side) (method.Result, error) {
 	last, err := r.attempt(ctx, side)
+	if err == nil && !last.Met && last.Method == method.CG {
+		err = r.keepBetter(ctx, start)
+	}
 	if err == nil && r.giveWay(last) {
 		r.event("from conjugate gradients to another method: " + last.Reason)
 		if err = r.placed.Prepare(ctx, r.plan.precondition, false); err == nil {
@@ -144,7 +186,7 @@ func (r *runner) attempts(ctx context.Context, side *report.Side) (method.Result
 // giveWay says that conjugate gradients, chosen by the program, must give way.
 func (r *runner) giveWay(last method.Result) bool {
 	return automatic(r.job.Method) && r.plan.conjugate && !last.Met &&
-		(last.Reason == method.ReasonIndefinite || last.Reason == method.ReasonStagnated || last.Reason == method.ReasonNotFinite)
+		(last.Reason == method.ReasonIndefinite || last.Reason == method.ReasonStagnated || last.Reason == method.ReasonNotFinite || last.Reason == method.ReasonFloor)
 }
 
 // hopeful is the residual below which a stagnated run was getting somewhere, so
@@ -287,11 +329,11 @@ func (r *runner) observe(base int, p method.Progress) {
 
 // snapshot keeps all answers so far.
 func (r *runner) snapshot(ctx context.Context) error {
-	x, err := r.placed.Solution(ctx)
+	x, _, err := r.answer(ctx)
 	if err != nil {
 		return err
 	}
 	all := append([][]float64(nil), r.x...)
-	all[r.column] = r.backward(x)
+	all[r.column] = x
 	return r.rim.Snapshot(r.column, all)
 }

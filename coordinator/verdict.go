@@ -14,6 +14,15 @@ import (
 // check recomputes the residuals of the answer, takes the verdict from them
 // alone, and keeps the answer in the order of the file.
 func (r *runner) check(ctx context.Context, last method.Result, side *report.Side) error {
+	x, exact, err := r.answer(ctx)
+	if err != nil {
+		return err
+	}
+	if !exact { // the verdict is on what can be written down
+		if err := r.setGuess(ctx, x); err != nil {
+			return err
+		}
+	}
 	res, err := r.placed.Check(ctx)
 	if err != nil {
 		return err
@@ -21,24 +30,23 @@ func (r *runner) check(ctx context.Context, last method.Result, side *report.Sid
 	side.Products++
 	side.Residuals = r.residuals(res)
 	side.Residuals.ConditionHint, side.Residuals.ForwardError = hint(last.ConditionHint), hint(last.ForwardError)
-	if last.Method == method.CG {
-		// Its hint comes from ‖x‖ and ‖b‖ alone: a true bound, and no estimate.
+	if last.ConditionHint <= 1 || r.sys.balanced || len(r.sys.empty) > 0 || !exact {
+		// Nothing was found, or x is not the only answer.
 		side.Residuals.ForwardError = report.Unknown()
 	}
 	side.Verdict, side.Reason = report.Short, last.Reason
-	if res.Met(r.job.Tolerance) {
+	switch {
+	case res.Met(r.job.Tolerance):
 		side.Verdict, side.Reason = report.Met, ""
-	} else if side.Reason == "" {
+	case !exact:
+		side.Reason, r.rec.Advice = reasonRange, "write the equations in other units"
+	case side.Reason == "":
 		side.Reason = method.ReasonStagnated
-	}
-	if side.Verdict == report.Short {
+		fallthrough
+	default:
 		r.explain(res, side)
 	}
-	x, err := r.placed.Solution(ctx)
-	if err != nil {
-		return err
-	}
-	if x = r.backward(x); finite(x) {
+	if finite(x) {
 		r.x[r.column] = x
 	}
 	return nil
@@ -118,8 +126,11 @@ func advice(reason string, res method.Residuals, j Job, p plan) string {
 	case method.ReasonContradictory:
 		return "no x can satisfy these equations together; look for a missing fixed value (all flux boundaries) or a row that was written twice"
 	case method.ReasonFloor:
+		if !finite([]float64{res.TrueFloor, res.ScaledFloor, res.True, res.Scaled}) {
+			return "the numbers leave the range of 64-bit floats; write the equations in other units"
+		}
 		floor := max(res.TrueFloor/max(res.Right, math.SmallestNonzeroFloat64), res.ScaledFloor/max(res.ScaledRight, math.SmallestNonzeroFloat64))
-		return fmt.Sprintf("64-bit numbers cannot do better than about %.0e on this system; a tolerance above that, or units that are less far apart", floor)
+		return fmt.Sprintf("with an x of this size rounding alone may leave %.0e in 64-bit numbers; a looser tolerance, or units that are less far apart", floor)
 	case method.ReasonIndefinite:
 		return "the matrix is not positive definite; leave --method to the program"
 	case ReasonInterrupted:

@@ -74,6 +74,11 @@ func (o Options) withDefaults(rows int) (filled Options, why string) {
 	}
 	unit := 8 * o.Zeta
 	o.SketchRows = (sketchRows + unit - 1) / unit * unit
+	if room := o.SketchRows/2 - 2; cycle+o.Recycle > room {
+		// A sketch shorter than twice its columns embeds nothing.
+		o.Recycle = min(o.Recycle, room/4)
+		cycle = min(cycle, room-o.Recycle)
+	}
 	if o.Method == "" || o.Method == Auto {
 		o.Method = Sketched
 		switch {
