@@ -112,6 +112,9 @@ func kindOf(diagonal bool) string {
 
 func TestSuite(t *testing.T) {
 	for _, blocks := range []int{1, 2, 4} {
+		if testing.Short() && blocks != 2 {
+			continue // under the race detector one number of neighbours is enough
+		}
 		t.Run(fmt.Sprintf("%d workers", blocks), func(t *testing.T) {
 			spacetest.Suite(t, 2500, func(t *testing.T, p spacetest.Problem, diagonal bool) method.Space {
 				return build(t, p, blocks, kindOf(diagonal))

@@ -149,7 +149,9 @@ func (w *Worker) call(ctx context.Context, o *proto.Order, ints []int32, floats 
 	}
 }
 
-// broken says why the connection does not work any more.
+// broken says why the connection does not work any more. It hides the cause: a
+// stream that was cancelled elsewhere must not pass for a verb that was
+// cancelled because another one failed.
 func (w *Worker) broken(err error) error {
 	select {
 	case <-w.pipe.Ended():
@@ -157,19 +159,36 @@ func (w *Worker) broken(err error) error {
 	case <-time.After(link.Beat):
 	}
 	if why := w.explain(); why != "" {
-		return &explained{why, err}
+		return errors.New(why)
 	}
-	return err
+	return fmt.Errorf("its connection has ended: %v", err)
 }
 
-// explained is the failure of a connection of which more is known.
-type explained struct {
-	why string
-	err error
+// lostNeighbour waits until the connection of a neighbour proves to have ended,
+// or ctx ends because its own verb has told so.
+func (w *Worker) lostNeighbour(ctx context.Context, f *proto.Failed) error {
+	ctx, stop := context.WithTimeout(ctx, link.Silence+link.Beat)
+	defer stop()
+	look := time.NewTicker(10 * time.Millisecond)
+	defer look.Stop()
+	for ctx.Err() == nil {
+		for _, p := range w.peers {
+			select {
+			case <-p.Ended():
+				return &fleet.ElsewhereError{Block: p.block, Err: p.broken(p.pipe.Err())}
+			default:
+			}
+		}
+		select {
+		case <-look.C:
+		case <-ctx.Done():
+		}
+	}
+	if errors.Is(ctx.Err(), context.DeadlineExceeded) {
+		return errors.New(f.Text)
+	}
+	return ctx.Err()
 }
-
-func (e *explained) Error() string { return e.why }
-func (e *explained) Unwrap() error { return e.err }
 
 // failure makes an error of what the worker said. When a neighbour of it went
 // away, the neighbour's own connection tells more: its error cancels ctx.
@@ -183,11 +202,7 @@ func (w *Worker) failure(ctx context.Context, f *proto.Failed) error {
 	case proto.Failed_CANCELLED:
 		return fmt.Errorf("%w: %s", context.Canceled, f.Text)
 	case proto.Failed_NEIGHBOUR:
-		select {
-		case <-ctx.Done():
-			return ctx.Err()
-		case <-time.After(link.Silence + link.Beat):
-		}
+		return w.lostNeighbour(ctx, f)
 	}
 	return errors.New(f.Text)
 }
