@@ -164,7 +164,21 @@ func (f *Space) cause(ctx context.Context, op string, failures []error) error {
 	return followed
 }
 
+// ElsewhereError is the failure of another member than the one whose verb
+// noticed it, as when a neighbour's halo stays away.
+type ElsewhereError struct {
+	Block int // of the member that failed
+	Err   error
+}
+
+func (e *ElsewhereError) Error() string { return e.Err.Error() }
+func (e *ElsewhereError) Unwrap() error { return e.Err }
+
 func (f *Space) memberError(i int, op string, err error) error {
+	var elsewhere *ElsewhereError
+	if errors.As(err, &elsewhere) {
+		i, err = elsewhere.Block, elsewhere.Err
+	}
 	lo, hi := f.members[i].Range()
 	return &MemberError{Member: f.members[i].Name(), Op: op, Lo: lo, Hi: hi, Err: err}
 }

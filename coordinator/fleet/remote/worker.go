@@ -200,6 +200,9 @@ func (w *Worker) failure(ctx context.Context, f *proto.Failed) error {
 	case proto.Failed_REFUSED:
 		return fmt.Errorf("%w: %s", fleet.ErrRefused, f.Text)
 	case proto.Failed_CANCELLED:
+		if ctx.Err() == nil { // nobody here asked for it: the worker is going away
+			return w.broken(errors.New(f.Text))
+		}
 		return fmt.Errorf("%w: %s", context.Canceled, f.Text)
 	case proto.Failed_NEIGHBOUR:
 		return w.lostNeighbour(ctx, f)
