@@ -1,6 +1,7 @@
 package coordinator
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"os"
@@ -33,17 +34,17 @@ func (r *runner) shortPlace() (path string, overwrite bool) {
 	if r.job.Overwrite {
 		return first, true
 	}
-	free := ""
+	free, own := "", r.job.ownShort()
 	for n := 1; n < mostNames; n++ {
 		path := numbered(first, n)
-		if own := r.job.OwnShort; own != "" && filepath.Clean(path) == filepath.Clean(own) {
+		if own != "" && filepath.Clean(path) == filepath.Clean(own) {
 			return path, true
 		}
 		if _, err := os.Lstat(path); err != nil {
 			if free == "" {
 				free = path
 			}
-			if r.job.OwnShort == "" || n > 100 {
+			if own == "" || n > 100 {
 				break
 			}
 		}
@@ -55,6 +56,17 @@ func (r *runner) shortPlace() (path string, overwrite bool) {
 		r.rec.AnswerNote = fmt.Sprintf("%s was there already and stays as it was", first)
 	}
 	return free, false
+}
+
+// ownShort is the path of the run's own earlier short answer, empty without one.
+func (j Job) ownShort() string {
+	switch {
+	case !j.OwnShort:
+		return ""
+	case j.ShortPath == "":
+		return ShortName(j.Out)
+	}
+	return j.ShortPath
 }
 
 // numbered puts "-n" behind ".short" in a name, from 2.
@@ -69,6 +81,7 @@ func numbered(short string, n int) string {
 // finish writes the answer and keeps a snapshot of one that can be carried on.
 func (r *runner) finish() error {
 	r.rim.Phase(report.Checking)
+	r.rec.Complex = r.sys.complex
 	r.knownError()
 	if r.rec.Verdict != report.Met {
 		if err := r.rim.Snapshot(r.done(), r.x); err != nil {
@@ -104,6 +117,9 @@ func (r *runner) write() error {
 	err := matfile.WriteDense(path, d, matfile.WriteOptions{Overwrite: overwrite, Comment: comment})
 	if err != nil {
 		r.rec.Verdict = report.None
+		if inner := (*os.PathError)(nil); errors.As(err, &inner) {
+			err = fmt.Errorf("%s: it could not be written: %w", path, inner.Err)
+		}
 		if kept := r.rim.Snapshot(r.done(), r.x); kept == nil && r.rec.ID != "" {
 			return fmt.Errorf("%w; the answer is kept: rowstead resume %s --out PATH writes it elsewhere", err, r.rec.ID)
 		}

@@ -30,8 +30,11 @@ type Job struct {
 	Trial                bool   // b = A·(1, …, 1), the answer is known
 	Out                  string // path of the answer
 	Overwrite            bool
-	// OwnShort says that an existing short answer is this run's own.
-	OwnShort bool
+	// OwnShort says that an earlier try of this run wrote a short answer that nobody
+	// has changed since; it may be replaced. ShortPath is where it is; empty: under
+	// the usual name.
+	OwnShort  bool
+	ShortPath string
 
 	Tolerance     float64 // required
 	Method        string

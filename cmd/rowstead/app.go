@@ -14,6 +14,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"rowstead/cmd/internal/place"
+	"rowstead/cmd/internal/records"
 	"rowstead/cmd/internal/replace"
 	"rowstead/coordinator/report"
 )
@@ -33,6 +34,13 @@ type app struct {
 	mu sync.Mutex // guards what follows
 	// record of the run, if there is one; printed as the object
 	record *report.Record
+	// task is the command in work: solve, audit or sample
+	task string
+	// current is the run in work; none when its ID is empty
+	current records.Run
+	lock    io.Closer // of current; the end of the process ends it
+	// written are the files that a sample has finished
+	written []string
 	// outputs are the files that may be growing under a temporary name
 	outputs []string
 	// said is set once the object is printed
@@ -155,7 +163,7 @@ func (a *app) commands() *cobra.Command {
 		CompletionOptions:  cobra.CompletionOptions{DisableDefaultCmd: true},
 		RunE: func(c *cobra.Command, args []string) error {
 			if len(args) > 0 {
-				return usage("there is no command %q; \"rowstead help\" lists them", args[0])
+				return usage("there is no command %q; \"rowstead help\" lists them", misspelt(args))
 			}
 			showHelp(a.stdout, c)
 			return nil
@@ -163,7 +171,7 @@ func (a *app) commands() *cobra.Command {
 	}
 	root.SetOut(a.stdout)
 	root.SetErr(a.stderr)
-	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return flagError(err) })
+	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error { return flagError(c.Name(), err) })
 	root.SetHelpFunc(func(c *cobra.Command, _ []string) { showHelp(a.stdout, c) })
 	root.SetHelpCommand(a.helpCommand(root))
 	cobra.EnableCommandSorting = false
@@ -174,6 +182,16 @@ func (a *app) commands() *cobra.Command {
 		c.Flags().BoolP("help", "h", false, "print this help")
 	}
 	return root
+}
+
+// misspelt is the first word that is no flag: what was meant as a command.
+func misspelt(args []string) string {
+	for _, arg := range args {
+		if !strings.HasPrefix(arg, "-") {
+			return arg
+		}
+	}
+	return args[0]
 }
 
 // helpCommand prints the help of a command by its name.

@@ -63,7 +63,7 @@ func base(value int, given bool) (matfile.IndexBase, error) {
 func (a *app) audit(files audit.Files, o audit.Options) error {
 	rec := report.New("audit")
 	rec.Tolerance, rec.Program, rec.Started = report.Number(o.Tolerance), program(), time.Now()
-	a.hold(rec)
+	a.hold("audit", rec)
 	for _, in := range []report.Input{{Role: "matrix", Path: files.Matrix}, {Role: "right side", Path: files.Right}, {Role: "answer", Path: files.Answer}} {
 		if !exists(in.Path) {
 			return usage("%s: there is no such file", in.Path)
@@ -96,6 +96,7 @@ func (a *app) audit(files audit.Files, o audit.Options) error {
 // fillAudit puts the result of an audit into the form of a record.
 func fillAudit(rec *report.Record, result *audit.Result) {
 	rec.Rows, rec.Columns, rec.Entries = result.Rows, result.Unknowns, int(result.Entries)
+	rec.Complex = result.Complex
 	for i, c := range result.Columns {
 		side := report.Side{Column: i, Verdict: report.Met, Residuals: report.Unmeasured()}
 		if !c.Met {

@@ -74,7 +74,11 @@ func oneLine(err error) string {
 }
 
 // flagError puts a fault of the flags into our words.
-func flagError(err error) error {
+func flagError(command string, err error) error {
+	where := "\"rowstead help " + command + "\" lists the flags"
+	if command == "rowstead" {
+		where = "\"rowstead help COMMAND\" lists the flags of a command"
+	}
 	var value *pflag.InvalidValueError
 	var missing *pflag.ValueRequiredError
 	var unknown *pflag.NotExistError
@@ -86,9 +90,9 @@ func flagError(err error) error {
 		}
 		return usage("--%s: %w", name, value.Unwrap())
 	case errors.As(err, &missing):
-		return usage("--%s needs a value; \"rowstead help\" and the command's name list the flags", missing.GetSpecifiedName())
+		return usage("--%s needs a value; %s", missing.GetSpecifiedName(), where)
 	case errors.As(err, &unknown):
-		return usage("there is no flag --%s here; \"rowstead help\" and the command's name list the flags", unknown.GetSpecifiedName())
+		return usage("there is no flag --%s here; %s", unknown.GetSpecifiedName(), where)
 	}
 	return &failure{statusInput, err}
 }

@@ -8,6 +8,7 @@ import (
 	"strings"
 	"sync/atomic"
 
+	"rowstead/cmd/internal/records"
 	"rowstead/coordinator/report"
 )
 
@@ -46,15 +47,39 @@ func (a *app) watch(signals <-chan os.Signal, exit func(int)) {
 		a.interrupt.ending.Store(true)
 		a.abandon()
 		a.screen.clear()
-		fmt.Fprintln(a.stderr, "rowstead: interrupted; nothing was left half-written")
+		text, run := a.farewell()
+		fmt.Fprintln(a.stderr, "rowstead: "+text)
 		if a.object {
 			r := report.New("solve")
-			r.Reason, r.Error = interruptedText, "interrupted before there was an answer to keep"
+			r.Reason, r.Error = interruptedText, text
+			if run.ID != "" {
+				r.ID, r.Path = run.ID, run.RecordPath()
+			}
 			a.sayObject(r.JSON())
 		}
 		exit(statusInterrupted)
 		return
 	}
+}
+
+// farewell says what an interrupt at once leaves behind, and which run is broken
+// off by it.
+func (a *app) farewell() (text string, run records.Run) {
+	a.mu.Lock()
+	defer a.mu.Unlock()
+	switch {
+	case len(a.written) > 0:
+		return "interrupted; written so far: " + strings.Join(a.written, ", "), run
+	case a.task != "solve":
+		return "interrupted; nothing was written", run
+	case a.current.ID == "":
+		return "interrupted before there was an answer to keep; nothing was left half-written", run
+	}
+	text = fmt.Sprintf("interrupted; nothing was left half-written; run %s is broken off", a.current.ID)
+	if a.current.HasSnapshot() {
+		text += "; carry on with rowstead resume " + a.current.ID
+	}
+	return text, a.current
 }
 
 // abandon ends worker processes and removes what is half-written: files of our

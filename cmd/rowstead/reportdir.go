@@ -15,7 +15,7 @@ var reportNames = [...]string{"report.txt", "report.json", "report.html", "conve
 // checkReport makes the folder and refuses files that are there already.
 func checkReport(folder string, overwrite bool) error {
 	if err := os.MkdirAll(folder, 0o755); err != nil {
-		return usage("--report: %w", err)
+		return usage("--report: %w", replace.Plain(err))
 	}
 	for _, name := range reportNames {
 		path := filepath.Join(folder, name)
@@ -24,7 +24,7 @@ func checkReport(folder string, overwrite bool) error {
 		}
 	}
 	if err := replace.Probe(filepath.Join(folder, reportNames[0])); err != nil {
-		return usage("--report: %w", err)
+		return usage("--report: %w", replace.Plain(err))
 	}
 	return nil
 }

@@ -9,7 +9,6 @@ import (
 	"github.com/spf13/pflag"
 
 	"rowstead/cmd/internal/records"
-	"rowstead/coordinator"
 	"rowstead/coordinator/report"
 	"rowstead/partition/matfile"
 )
@@ -54,6 +53,9 @@ func (a *app) takeUp(id string) (*session, error) {
 	old, err := run.Load()
 	if err != nil {
 		return nil, usage("%w", err)
+	}
+	if run.Alive() {
+		return nil, usage("run %s is still going on", run.ID)
 	}
 	if old.Job != "solve" {
 		return nil, usage("run %s is of the kind %q, which cannot be carried on", run.ID, old.Job)
@@ -102,7 +104,14 @@ func (s *session) again(old *report.Record) error {
 			j.Cuts = in.Path
 		}
 	}
-	j.OwnShort = ownShort(coordinator.ShortName(j.Out), old)
+	if own := old.Answer; own != "" && old.Verdict == report.Short {
+		if !filepath.IsAbs(own) {
+			own = filepath.Join(old.Folder, own)
+		}
+		if ownShort(own, old) {
+			j.OwnShort, j.ShortPath = true, own
+		}
+	}
 	return s.flags.check(f)
 }
 
@@ -120,7 +129,7 @@ func ownShort(path string, old *report.Record) bool {
 func (s *session) apply(changes solveFlags) {
 	j := &s.flags.job
 	if changes.job.Out != "" {
-		j.Out, j.OwnShort = changes.job.Out, false
+		j.Out = changes.job.Out
 		s.asked = withFlag(s.asked, "out", changes.job.Out)
 	}
 	j.Overwrite = changes.job.Overwrite

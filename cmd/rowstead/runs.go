@@ -51,7 +51,11 @@ func runLine(r *report.Record) string {
 	if r.Residuals.True.Finite() {
 		residual = fmt.Sprintf("%.1e", float64(r.Residuals.True))
 	}
-	return fmt.Sprintf("%-34s %-11s %-6s %-8s %9d rows  %s", r.ID, r.State, r.Verdict, residual, r.Rows, matrixOf(r))
+	line := fmt.Sprintf("%-34s %-11s %-6s %-8s %9d rows  %s", r.ID, r.State, r.Verdict, residual, r.Rows, matrixOf(r))
+	if r.State == report.BrokenOff && r.Advice != "" {
+		line += "; " + r.Advice
+	}
+	return line
 }
 
 // matrixOf is the name of the matrix file.
@@ -74,10 +78,14 @@ func (a *app) runsObject(all []*report.Record) error {
 		Rows     int           `json:"rows"`
 		Matrix   string        `json:"matrix"`
 		Record   string        `json:"record"`
+		Advice   string        `json:"advice"` // how to go on with one that is broken off
 	}
 	lines := make([]line, len(all))
 	for i, r := range all {
-		lines[i] = line{r.ID, r.State, r.Verdict, r.Residuals.True, r.Rows, matrixOf(r), r.Path}
+		lines[i] = line{r.ID, r.State, r.Verdict, r.Residuals.True, r.Rows, matrixOf(r), r.Path, ""}
+		if r.State == report.BrokenOff {
+			lines[i].Advice = r.Advice
+		}
 	}
 	text, err := json.Marshal(map[string]any{"runs": lines})
 	if err != nil {

@@ -10,6 +10,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"rowstead/cmd/internal/replace"
 	"rowstead/partition/matfile"
 	"rowstead/partition/samples"
 )
@@ -53,7 +54,7 @@ func (a *app) sample(name, folder string, size int, overwrite bool) error {
 		return usage("%w", err)
 	}
 	if err := os.MkdirAll(folder, 0o755); err != nil {
-		return usage("--out: %w", err)
+		return usage("--out: %w", replace.Plain(err))
 	}
 	matrix, right, notes := filepath.Join(folder, name+".mtx"), filepath.Join(folder, name+"_rhs.mtx"), filepath.Join(folder, name+".txt")
 	for _, path := range []string{matrix, right, notes} {
@@ -61,23 +62,32 @@ func (a *app) sample(name, folder string, size int, overwrite bool) error {
 			return usage("%s: it exists already; --overwrite replaces it, --out DIR writes elsewhere", path)
 		}
 	}
-	a.hold(nil, matrix, right)
+	a.hold("sample", nil, matrix, right)
 	options := matfile.WriteOptions{Overwrite: overwrite, Comment: []string{model.Title, fmt.Sprintf("rowstead sample %s, %d unknowns", name, model.Rows())}}
 	if err := writeModel(matrix, model, options); err != nil {
-		return err
+		return replace.Plain(err)
 	}
+	a.wrote(matrix)
 	b := &matfile.Dense{Rows: model.Rows(), Cols: 1, Values: model.Right()}
 	if err := matfile.WriteDense(right, b, options); err != nil {
-		return err
+		return replace.Plain(err)
 	}
+	a.wrote(right)
 	err = a.pending.Write(notes, overwrite, func(w io.Writer) error {
 		_, err := io.WriteString(w, model.Notes())
 		return err
 	})
 	if err != nil {
-		return err
+		return replace.Plain(err)
 	}
 	return a.tellSample(model, matrix, right, notes)
+}
+
+// wrote notes a finished file for the interrupt handler.
+func (a *app) wrote(path string) {
+	a.mu.Lock()
+	defer a.mu.Unlock()
+	a.written = append(a.written, path)
 }
 
 // writeModel writes the matrix, its lower half where it is symmetric. The

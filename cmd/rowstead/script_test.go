@@ -30,6 +30,7 @@ func TestMain(m *testing.M) {
 //	oneline                  standard error is one line of ours
 //	nofiles PATTERN ...      no file has such a name
 //	interrupt N rowstead ... starts it, sends N interrupts once it is stepping; the status is 130
+//	killed rowstead ...      starts it and kills it once it has a snapshot
 //	tinydisk DIR BYTES       a full disk, where condition [tinydisk] holds
 func TestScripts(t *testing.T) {
 	testscript.Run(t, testscript.Params{
@@ -41,7 +42,7 @@ func TestScripts(t *testing.T) {
 		Condition: condition,
 		Cmds: map[string]func(ts *testscript.TestScript, neg bool, args []string){
 			"status": scriptStatus, "object": scriptObject, "oneline": scriptOneLine, "nofiles": scriptNoFiles,
-			"interrupt": scriptInterrupt, "tinydisk": scriptTinyDisk,
+			"interrupt": scriptInterrupt, "tinydisk": scriptTinyDisk, "killed": scriptKilled,
 		},
 	})
 }
@@ -83,7 +84,7 @@ func exitStatus(ts *testscript.TestScript, err error) int {
 }
 
 // contract are the keys that every object has.
-var contract = strings.Fields(`verdict reason error rows columns entries method precondition cuts workers tolerance
+var contract = strings.Fields(`verdict reason error rows columns entries method precondition cuts row_base workers tolerance
 	true_residual scaled_residual rowwise_error backward_error condition_hint forward_error steps full_steps
 	cycles products seconds traffic coordinator_peak_bytes seed answer record`)
 
@@ -139,16 +140,8 @@ const patience = 60 * time.Second
 func scriptInterrupt(ts *testscript.TestScript, neg bool, args []string) {
 	count, err := strconv.Atoi(args[0])
 	ts.Check(err)
-	path, err := exec.LookPath(args[1])
-	ts.Check(err)
-	c := exec.Command(path, args[2:]...)
-	c.Dir = ts.MkAbs(".")
-	c.Env = append(os.Environ(), "ROWSTEAD_HOME="+ts.Getenv("ROWSTEAD_HOME"))
 	var stdout, stderr bytes.Buffer
-	c.Stdout, c.Stderr = &stdout, &stderr
-	ts.Check(c.Start())
-	done := make(chan error, 1)
-	go func() { done <- c.Wait() }()
+	c, done := background(ts, args[1:], &stdout, &stderr)
 	waitFor(ts, done, func() bool { return stepping(ts) })
 	for range count {
 		ts.Check(c.Process.Signal(os.Interrupt))
@@ -166,6 +159,33 @@ func scriptInterrupt(ts *testscript.TestScript, neg bool, args []string) {
 	}
 	ts.Check(os.WriteFile(ts.MkAbs("out.json"), stdout.Bytes(), 0o644))
 	ts.Check(os.WriteFile(ts.MkAbs("err.txt"), stderr.Bytes(), 0o644))
+}
+
+// background starts a program; done gives how it ended.
+func background(ts *testscript.TestScript, args []string, stdout, stderr *bytes.Buffer) (c *exec.Cmd, done chan error) {
+	path, err := exec.LookPath(args[0])
+	ts.Check(err)
+	c = exec.Command(path, args[1:]...)
+	c.Dir = ts.MkAbs(".")
+	c.Env = append(os.Environ(), "ROWSTEAD_HOME="+ts.Getenv("ROWSTEAD_HOME"))
+	c.Stdout, c.Stderr = stdout, stderr
+	ts.Check(c.Start())
+	done = make(chan error, 1)
+	go func() { done <- c.Wait() }()
+	return c, done
+}
+
+// scriptKilled starts the program, waits until it has a snapshot, and kills that
+// one process.
+func scriptKilled(ts *testscript.TestScript, neg bool, args []string) {
+	var stdout, stderr bytes.Buffer
+	c, done := background(ts, args, &stdout, &stderr)
+	waitFor(ts, done, func() bool {
+		found, _ := filepath.Glob(filepath.Join(ts.Getenv("ROWSTEAD_HOME"), "runs", "*", "snapshot"))
+		return len(found) > 0 && stepping(ts)
+	})
+	ts.Check(c.Process.Kill())
+	<-done
 }
 
 // waitFor polls until ready, and fails when the program ends before.

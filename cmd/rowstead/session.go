@@ -40,7 +40,7 @@ func (a *app) solve(s *session) error {
 	if s.old != nil {
 		s.rec.ID, s.rec.Path, s.rec.Resumed = s.old.ID, s.old.Path, s.old.Resumed+1
 	}
-	a.hold(s.rec, s.flags.job.Out, coordinator.ShortName(s.flags.job.Out))
+	a.hold("solve", s.rec, s.flags.job.Out, coordinator.ShortName(s.flags.job.Out))
 	keepWithin(s.flags.job.Memory)
 	err := coordinator.Run(context.Background(), s.flags.job, a.rim(s), s.rec)
 	a.interrupt.gentle.Store(true) // what follows is short and should be whole
@@ -62,10 +62,10 @@ func keepWithin(bytes int64) {
 }
 
 // hold tells the interrupt handler what it may have to clean up and print.
-func (a *app) hold(rec *report.Record, outputs ...string) {
+func (a *app) hold(task string, rec *report.Record, outputs ...string) {
 	a.mu.Lock()
 	defer a.mu.Unlock()
-	a.record, a.outputs = rec, outputs
+	a.task, a.record, a.outputs = task, rec, outputs
 }
 
 // rim is what the coordinator may ask of this program.
@@ -104,6 +104,7 @@ func (a *app) rim(s *session) coordinator.Rim {
 func (a *app) openRun(s *session) {
 	s.opened = true
 	if s.run.ID != "" {
+		a.going(s.run)
 		return
 	}
 	store, err := records.Open(&a.pending)
@@ -116,6 +117,19 @@ func (a *app) openRun(s *session) {
 		return
 	}
 	s.rec.ID, s.rec.Path = s.run.ID, s.run.RecordPath()
+	a.going(s.run)
+}
+
+// going marks the run as one whose process lives, and lets the interrupt handler
+// name it.
+func (a *app) going(run records.Run) {
+	lock, err := run.Hold()
+	if err != nil {
+		fmt.Fprintf(a.stderr, "rowstead: \"rowstead runs\" cannot tell that this run is going on: %s\n", oneLine(err))
+	}
+	a.mu.Lock()
+	defer a.mu.Unlock()
+	a.current, a.lock = run, lock
 }
 
 // save writes the record where there is a folder for it and the inputs are known
@@ -148,13 +162,22 @@ func (a *app) conclude(s *session) error {
 	if s.rec.Verdict != report.Met && s.run.ID != "" {
 		s.rec.Advice = strings.ReplaceAll(s.rec.Advice, "rowstead resume", "rowstead resume "+s.run.ID)
 	}
+	if s.rec.Verdict == report.Met {
+		s.dropShort()
+	}
 	a.save(s)
+	var failed error
 	if s.flags.report != "" {
-		if err := a.writeReport(s.flags.report, s.rec, s.flags.job.Overwrite); err != nil {
-			return err
-		}
+		failed = a.writeReport(s.flags.report, s.rec, s.flags.job.Overwrite)
+	}
+	if failed != nil { // the verdict is told all the same
+		failed = &failure{statusOther, fmt.Errorf("the report could not be written: %w", replace.Plain(failed))}
+		s.rec.Error = oneLine(failed)
 	}
 	a.tell(s.rec)
+	if failed != nil {
+		return failed
+	}
 	if status != statusMet {
 		return &verdictError{status}
 	}
@@ -168,30 +191,13 @@ func (a *app) tell(rec *report.Record) {
 		a.sayObject(rec.JSON())
 	case a.quiet:
 		head, _, _ := strings.Cut(rec.Text(), "\n")
+		if rec.Job == "solve" && rec.Answer != "" {
+			head += " The answer is in " + rec.Answer + "."
+		}
 		fmt.Fprintf(a.stdout, "%s %s\n", head, report.Caution)
 	default:
 		fmt.Fprint(a.stdout, rec.Text())
 	}
-}
-
-// checkOutputs refuses outputs that exist or cannot be written, before any work.
-func (s *session) checkOutputs() error {
-	j := s.flags.job
-	for _, path := range []string{j.Out, coordinator.ShortName(j.Out)} {
-		if exists(path) && !j.Overwrite && !(j.OwnShort && path != j.Out) {
-			return usage("%s: it exists already; --overwrite replaces it, --out FILE writes elsewhere", path)
-		}
-	}
-	if status, err := os.Stat(j.Out); err == nil && status.IsDir() {
-		return usage("%s: it is a folder; --out takes the name of a file", j.Out)
-	}
-	if err := replace.Probe(j.Out); err != nil {
-		return usage("the answer cannot be written there: %w; --out FILE writes elsewhere", err)
-	}
-	if s.flags.report == "" {
-		return nil
-	}
-	return checkReport(s.flags.report, j.Overwrite)
 }
 
 // stem is the name of a file without folder and endings.

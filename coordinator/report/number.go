@@ -46,13 +46,10 @@ func shortest(v float64) string {
 }
 
 // short writes v with the given number of significant digits for a person;
-// "unknown" when it was not measured.
+// "not known" when it was not measured or is not finite.
 func short(v Number, digits int) string {
-	if math.IsInf(float64(v), 0) {
-		return "infinite"
-	}
 	if !v.Finite() {
-		return "unknown"
+		return "not known"
 	}
 	a := math.Abs(float64(v))
 	if v == 0 || (a >= 1e-2 && a < 1e5) {

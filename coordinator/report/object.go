@@ -15,6 +15,7 @@ type object struct {
 	Method        string         `json:"method"`
 	Precondition  string         `json:"precondition"`
 	Cuts          []int          `json:"cuts"`
+	RowBase       int            `json:"row_base"` // from where cuts and first_row count
 	Workers       []workerObject `json:"workers"`
 	Tolerance     Number         `json:"tolerance"`
 	True          Number         `json:"true_residual"`
@@ -51,7 +52,7 @@ func (r *Record) JSON() []byte {
 	o := object{
 		Verdict: r.Verdict, Reason: r.Reason, Error: r.Error,
 		Rows: r.Rows, Columns: r.Columns, Entries: r.Entries,
-		Method: r.Method, Precondition: r.Precondition, Cuts: r.Cuts,
+		Method: r.Method, Precondition: r.Precondition, Cuts: r.Cuts, RowBase: r.RowBase,
 		Workers: make([]workerObject, len(r.Workers)), Tolerance: r.Tolerance,
 		True: r.Residuals.True, Scaled: r.Residuals.Scaled, RowWise: r.Residuals.RowWise,
 		Backward: r.Residuals.Backward, ConditionHint: r.Residuals.ConditionHint, ForwardError: r.Residuals.ForwardError,

@@ -27,9 +27,14 @@ func (p Progress) Sentence() string {
 		fmt.Fprintf(&b, "right side %d of %d: ", p.Column+1, p.Columns)
 	}
 	b.WriteString(plural(p.Products, "product"))
-	if p.Left.Finite() {
+	estimated := p.Estimated.Finite() && p.Estimated > 0
+	switch {
+	case p.Left.Finite() && p.Left >= 1 && estimated:
+		// Nothing was recomputed since the start: only the estimate moves.
+		fmt.Fprintf(&b, "; %s of b left, estimated", short(p.Estimated, 1))
+	case p.Left.Finite():
 		fmt.Fprintf(&b, "; %s of b left", short(p.Left, 1))
-		if p.Estimated.Finite() && p.Estimated > 0 {
+		if estimated {
 			fmt.Fprintf(&b, ", %s estimated", short(p.Estimated, 1))
 		}
 	}

@@ -52,13 +52,18 @@ type Record struct {
 	Inputs []Input
 
 	Rows, Columns, Entries int
-	Method                 string
-	Precondition           string
-	Basis                  string
-	Cuts                   []int
-	Workers                []Worker
-	Choices                []Choice
-	Seed                   uint64
+	// Complex says that they are those of the real form, twice the file's.
+	Complex bool `json:",omitempty"`
+	// RowBase is from where rows count in the record and the object: 0. Text counts
+	// from 1, as files do.
+	RowBase      int
+	Method       string
+	Precondition string
+	Basis        string
+	Cuts         []int
+	Workers      []Worker
+	Choices      []Choice
+	Seed         uint64
 
 	Verdict   string // Met, Short or None
 	Reason    string // why it is not met, in plain words
@@ -78,6 +83,7 @@ type Record struct {
 	Curve                              []Point
 
 	Answer     string // as the user named it; empty when none was written
+	AnswerNote string `json:",omitempty"` // what else is to be said of it
 	AnswerHash string // SHA-256 of the answer file
 	Path       string // of the record itself
 	Resumed    int    // how often the run was carried on

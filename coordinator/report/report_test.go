@@ -101,7 +101,7 @@ func TestGolden(t *testing.T) {
 
 // The contract: these keys, all of them, whatever the status.
 func TestObjectKeys(t *testing.T) {
-	want := strings.Fields(`verdict reason error rows columns entries method precondition cuts workers tolerance
+	want := strings.Fields(`verdict reason error rows columns entries method precondition cuts row_base workers tolerance
 		true_residual scaled_residual rowwise_error backward_error condition_hint forward_error steps full_steps
 		cycles products seconds traffic coordinator_peak_bytes seed answer record`)
 	for _, r := range []*Record{metRecord(), shortRecord(), refusedRecord(), New("audit")} {
@@ -199,6 +199,7 @@ func TestSentence(t *testing.T) {
 		want string
 	}{
 		{Progress{Products: 240, Left: 8e-5, Estimated: 6e-5, Remaining: 180}, "240 products; 8e-5 of b left, 6e-5 estimated; about 3 min"},
+		{Progress{Products: 40, Left: 1, Estimated: 6e-5, Remaining: Unknown()}, "40 products; 6e-5 of b left, estimated"},
 		{Progress{Products: 1, Left: Unknown(), Remaining: Unknown()}, "1 product"},
 		{Progress{Products: 3, Left: 0.5, Estimated: Unknown(), Remaining: Unknown(), Column: 1, Columns: 3}, "right side 2 of 3: 3 products; 0.5 of b left"},
 	} {

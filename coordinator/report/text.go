@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"slices"
 	"strings"
 )
 
@@ -12,7 +13,7 @@ import (
 func (r *Record) Text() string {
 	var b strings.Builder
 	b.WriteString(r.headline() + "\n")
-	if r.Advice != "" && r.Verdict == Short {
+	if r.Advice != "" && r.Verdict != Met {
 		b.WriteString("What to try: " + r.Advice + "\n")
 	}
 	r.writeResiduals(&b)
@@ -67,27 +68,28 @@ func (r *Record) writeResiduals(b *strings.Builder) {
 	row("residual, rows scaled to 1", x.Scaled, against(x.Scaled))
 	row("worst row by its own size", x.RowWise, worstRows(x.Worst))
 	row("backward error", x.Backward, "")
-	fmt.Fprintf(b, "  %-30s %s\n", "digits of x to expect", r.digits())
+	fmt.Fprintf(b, "  %-30s %s\n", "digits of x", r.digits())
 	if r.KnownError.Finite() {
 		row("error against the known answer", r.KnownError, "x = (1, …, 1)")
 	}
 }
 
-// digits says how many digits of x the residual and the condition let expect.
+// digits bounds the digits of x by the residual and the condition; a lower bound
+// of the condition gives an upper one of the digits.
 func (r *Record) digits() string {
 	x := r.Residuals
 	if !x.ConditionHint.Finite() || x.ConditionHint <= 0 {
-		return "unknown (no estimate of the condition)"
+		return "not known (no estimate of the condition)"
 	}
 	if !x.ForwardError.Finite() || x.ForwardError <= 0 {
-		return fmt.Sprintf("unknown (all that is known: the condition is at least %s)", short(x.ConditionHint, 2))
+		return fmt.Sprintf("not known (the condition is at least %s)", short(x.ConditionHint, 2))
 	}
-	condition := fmt.Sprintf("(condition at least %s)", short(x.ConditionHint, 2))
+	condition := fmt.Sprintf("(the condition is at least %s)", short(x.ConditionHint, 2))
 	count := int(math.Floor(-math.Log10(float64(x.ForwardError))))
 	if count < 1 {
 		return "none " + condition
 	}
-	return fmt.Sprintf("about %d %s", min(count, 16), condition)
+	return fmt.Sprintf("at most about %d %s", min(count, 16), condition)
 }
 
 // worstRows names up to four rows as files count them.
@@ -96,13 +98,17 @@ func worstRows(rows []Row) string {
 		return ""
 	}
 	names := make([]string, 0, 4)
-	for _, row := range rows[:min(4, len(rows))] {
-		names = append(names, fmt.Sprint(row.Row+1))
+	for _, row := range rows {
+		// A complex row stands for two real ones.
+		if name := fmt.Sprint(row.Row + 1); len(names) < 4 && !slices.Contains(names, name) {
+			names = append(names, name)
+		}
 	}
-	if len(names) == 1 {
-		return "row " + names[0]
+	noun := "row "
+	if len(names) > 1 {
+		noun = "rows "
 	}
-	return "rows " + strings.Join(names, ", ")
+	return noun + strings.Join(names, ", ") + ", counted from 1 as in the file"
 }
 
 // writeSides lists the right sides one by one when there are several.
@@ -112,8 +118,8 @@ func (r *Record) writeSides(b *strings.Builder) {
 	}
 	fmt.Fprintf(b, "\n%d right sides; the figures above are those of the worst.\n", len(r.Sides))
 	for _, s := range r.Sides {
-		writeTrimmed(b, "  column %-4d %-6s %-10s %-10s %d products  %s", s.Column+1, s.Verdict,
-			short(s.Residuals.True, 3), short(s.Residuals.Scaled, 3), s.Products, s.Reason)
+		writeTrimmed(b, "  column %-4d %-6s %-10s %-10s %s  %s", s.Column+1, s.Verdict,
+			short(s.Residuals.True, 3), short(s.Residuals.Scaled, 3), plural(s.Products, "product"), s.Reason)
 	}
 }
 
@@ -122,7 +128,11 @@ func (r *Record) writeEffort(b *strings.Builder) {
 	if r.Rows == 0 {
 		return
 	}
-	fmt.Fprintf(b, "\n  %d equations, %d unknowns, %d entries", r.Rows, r.Columns, r.Entries)
+	if r.Complex {
+		fmt.Fprintf(b, "\n  %s (%d real ones), %s, %s of the real form", plural(r.Rows/2, "complex equation"), r.Rows, plural(r.Columns/2, "unknown"), entriesText(r.Entries))
+	} else {
+		fmt.Fprintf(b, "\n  %s, %s, %s", plural(r.Rows, "equation"), plural(r.Columns, "unknown"), entriesText(r.Entries))
+	}
 	for _, in := range r.Inputs {
 		if in.Role == "matrix" {
 			fmt.Fprintf(b, " (%s)", filepath.Base(in.Path))
@@ -132,7 +142,7 @@ func (r *Record) writeEffort(b *strings.Builder) {
 	if r.Verdict == None || r.Job == "audit" {
 		return
 	}
-	fmt.Fprintf(b, "  %d products, %d steps (%d full), %s, %s\n", r.Products, r.Steps, r.FullSteps,
+	fmt.Fprintf(b, "  %s, %s (%d full), %s, %s\n", plural(r.Products, "product"), plural(r.Steps, "step"), r.FullSteps,
 		plural(r.Cycles, "cycle"), Span(float64(r.Seconds.Total)))
 }
 
@@ -169,6 +179,9 @@ func (r *Record) writeFiles(b *strings.Builder) {
 	if r.Answer != "" {
 		fmt.Fprintf(b, "Answer: %s\n", r.Answer)
 	}
+	if r.AnswerNote != "" {
+		fmt.Fprintf(b, "        %s\n", r.AnswerNote)
+	}
 	if r.ID != "" {
 		fmt.Fprintf(b, "Record: %s  (rowstead show %s)\n", r.Path, r.ID)
 	}
@@ -177,6 +190,14 @@ func (r *Record) writeFiles(b *strings.Builder) {
 // writeTrimmed writes one line without blanks at its end.
 func writeTrimmed(b *strings.Builder, format string, values ...any) {
 	b.WriteString(strings.TrimRight(fmt.Sprintf(format, values...), " ") + "\n")
+}
+
+// entriesText writes a count of entries.
+func entriesText(n int) string {
+	if n == 1 {
+		return "1 entry"
+	}
+	return fmt.Sprintf("%d entries", n)
 }
 
 // plural writes a count with its noun.

@@ -204,5 +204,6 @@ func (r Run) Load() (*report.Record, error) {
 	if record.Format > report.Format {
 		return nil, fmt.Errorf("%s: written by a newer rowstead (format %d, this one reads %d)", r.RecordPath(), record.Format, report.Format)
 	}
+	r.settle(record)
 	return record, nil
 }

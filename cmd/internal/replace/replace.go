@@ -13,7 +13,9 @@ import (
 	"io"
 	"os"
 	"path/filepath"
+	"strings"
 	"sync"
+	"syscall"
 )
 
 // bufferBytes is the size of the write buffer.
@@ -57,10 +59,45 @@ func (p *Pending) Write(path string, overwrite bool, fill func(io.Writer) error)
 
 // named puts path before an error that names the temporary file instead.
 func named(path string, err error) error {
-	if inner := (*os.PathError)(nil); errors.As(err, &inner) {
-		return fmt.Errorf("%s: %w", path, inner.Err)
+	var inner *os.PathError
+	if errors.As(err, &inner) {
+		err = inner.Err
+	}
+	folder := filepath.ToSlash(filepath.Dir(path))
+	switch {
+	case errors.Is(err, os.ErrNotExist):
+		return plainError{fmt.Sprintf("%s: the folder %s does not exist", path, folder), err}
+	case errors.Is(err, os.ErrPermission):
+		return plainError{fmt.Sprintf("%s: nothing may be written into the folder %s", path, folder), err}
+	case errors.Is(err, syscall.ENOTDIR):
+		return plainError{fmt.Sprintf("%s: on the way there is a file where a folder should be", path), err}
 	}
 	return fmt.Errorf("%s: %w", path, err)
+}
+
+// plainError tells in our words what the operating system said.
+type plainError struct {
+	text string
+	err  error
+}
+
+func (e plainError) Error() string { return e.text }
+func (e plainError) Unwrap() error { return e.err }
+
+// Plain tells in our words why a file or its folder could not be written, and
+// names the file, not the temporary one that it grows as; other errors stay.
+func Plain(err error) error {
+	var inner *os.PathError
+	if !errors.As(err, &inner) {
+		return err
+	}
+	path := inner.Path
+	if at := strings.Index(path, ".part-"); at >= 0 {
+		path = filepath.Join(filepath.Dir(path), strings.TrimPrefix(filepath.Base(path[:at]), "."))
+	} else if short := len(path) - len(".00000000.part"); short > 0 && strings.HasSuffix(path, ".part") {
+		path = path[:short]
+	}
+	return named(path, inner.Err)
 }
 
 // create opens a temporary file beside path and remembers it.

@@ -1,0 +1,13 @@
+package records
+
+import (
+	"os"
+
+	"golang.org/x/sys/windows"
+)
+
+// lock takes the file for this process alone, or fails at once.
+func lock(f *os.File) error {
+	return windows.LockFileEx(windows.Handle(f.Fd()), windows.LOCKFILE_EXCLUSIVE_LOCK|windows.LOCKFILE_FAIL_IMMEDIATELY,
+		0, 1, 0, new(windows.Overlapped))
+}
