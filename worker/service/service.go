@@ -65,14 +65,19 @@ type order struct {
 
 var errBye = errors.New("the coordinator has said goodbye")
 
-// Run joins the run of permit and serves it until the coordinator says goodbye,
-// which is no error, or the connection or ctx ends.
-func Run(ctx context.Context, permit *proto.Permit, o Options) error {
+func newSession(permit *proto.Permit, o Options) *session {
 	s := &session{
 		options: o, orders: make(chan order, 4),
 		identity: keys.Identity{Authority: permit.Authority, Certificate: permit.Certificate, PrivateKey: permit.PrivateKey},
 	}
 	s.exchange = newExchange(s)
+	return s
+}
+
+// Run joins the run of permit and serves it until the coordinator says goodbye,
+// which is no error, or the connection or ctx ends.
+func Run(ctx context.Context, permit *proto.Permit, o Options) error {
+	s := newSession(permit, o)
 	server, err := link.Listen(permit.Listen, s.identity, func(r grpc.ServiceRegistrar) {
 		proto.RegisterNeighbourServer(r, s.exchange)
 	})
@@ -105,10 +110,10 @@ func Run(ctx context.Context, permit *proto.Permit, o Options) error {
 	if s.block != nil {
 		s.block.Close()
 	}
-	if errors.Is(err, errBye) {
-		return nil
+	if !errors.Is(err, errBye) {
+		return fmt.Errorf("%s: %w", permit.Name, err)
 	}
-	return fmt.Errorf("%s: %w", permit.Name, err)
+	return nil
 }
 
 // encode is the control part of a message of ours, which cannot fail.

@@ -37,10 +37,14 @@ func (s *session) carryOut(ctx context.Context, o order) (reply, ints, floats, e
 	if s.block == nil {
 		return nil, nil, nil, senseless("a verb before the rows are prepared")
 	}
-	if what := o.GetFetch(); what != nil {
-		return s.fetch(what)
-	}
+	return s.verb(ctx, o)
+}
+
+// verb carries out an order about the block.
+func (s *session) verb(ctx context.Context, o order) (reply, ints, floats, error) {
 	switch what := o.What.(type) {
+	case *proto.Order_Fetch:
+		return s.fetch(what.Fetch)
 	case *proto.Order_Advance:
 		return s.advance(ctx, what.Advance, o.floats)
 	case *proto.Order_Direct, *proto.Order_Move, *proto.Order_StartConjugate:
@@ -108,6 +112,12 @@ func (s *session) residual(ctx context.Context, o order) (reply, ints, floats, e
 	if err != nil {
 		return nil, nil, nil, err
 	}
+	control, numbers := told(r)
+	return &proto.Reply{What: &proto.Reply_Residuals{Residuals: control}}, nil, floats{numbers}, nil
+}
+
+// told puts residuals into the words and numbers of the wire.
+func told(r worker.ResidualSums) (*proto.Residuals, []float64) {
 	out := make([]float64, 0, 34+len(r.WorstError))
 	for _, sum := range []worker.Squares{
 		r.Inner, r.InnerRight, r.True, r.Right, r.Scaled, r.ScaledRight, r.TrueFloor, r.ScaledFloor, r.Solution, r.InnerMatrix,
@@ -119,7 +129,7 @@ func (s *session) residual(ctx context.Context, o order) (reply, ints, floats, e
 	for _, row := range r.WorstRow {
 		control.WorstRow = append(control.WorstRow, int64(row))
 	}
-	return &proto.Reply{What: &proto.Reply_Residuals{Residuals: control}}, nil, floats{append(out, r.WorstError...)}, nil
+	return control, append(out, r.WorstError...)
 }
 
 // advance carries out a step.

@@ -3,6 +3,7 @@ package place
 import (
 	"context"
 	"encoding/binary"
+	"errors"
 	"fmt"
 	"io"
 	"os/exec"
@@ -63,6 +64,9 @@ func (o *Office) start(permit *proto.Permit) (*child, error) {
 	}()
 	head := binary.LittleEndian.AppendUint32(nil, uint32(len(text)))
 	if _, err := c.stdin.Write(append(head, text...)); err != nil {
+		if why := c.explain(); why != "" {
+			return nil, errors.New(why)
+		}
 		return nil, fmt.Errorf("hand it its permit: %w", err)
 	}
 	return c, nil

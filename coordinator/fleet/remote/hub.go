@@ -95,20 +95,10 @@ func (h *Hub) Serve(stream grpc.BidiStreamingServer[proto.Reply, proto.Order]) e
 	if err != nil {
 		return status.Error(codes.Unauthenticated, err.Error())
 	}
-	h.mu.Lock()
-	arrived, known := h.arrived[name]
-	if known {
-		for _, w := range h.workers {
-			known = known && w.name != name
-		}
-	}
-	if !known {
-		h.mu.Unlock()
+	w, arrived := h.admit(name, stream)
+	if w == nil {
 		return status.Errorf(codes.PermissionDenied, "%s is not expected, or has joined before", name)
 	}
-	w := newWorker(name, stream)
-	h.workers = append(h.workers, w)
-	h.mu.Unlock()
 	timer := time.AfterFunc(link.HandshakeTime, func() { w.pipe.End(errors.New("it did not introduce itself")) })
 	defer timer.Stop()
 	select {
@@ -134,6 +124,23 @@ func (h *Hub) Serve(stream grpc.BidiStreamingServer[proto.Reply, proto.Order]) e
 		w.pipe.End(errClosed)
 		return nil
 	}
+}
+
+// admit makes the worker of that name, if it has a permit and calls for the first
+// time; else nil. It goes to arrived once it has introduced itself.
+func (h *Hub) admit(name string, stream link.Stream) (w *Worker, arrived chan<- *Worker) {
+	h.mu.Lock()
+	defer h.mu.Unlock()
+	expected, known := h.arrived[name]
+	for _, earlier := range h.workers {
+		known = known && earlier.name != name
+	}
+	if !known {
+		return nil, nil
+	}
+	w = newWorker(name, stream)
+	h.workers = append(h.workers, w)
+	return w, expected
 }
 
 var errClosed = errors.New("the run is over")

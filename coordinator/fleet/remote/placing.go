@@ -114,23 +114,7 @@ func (w *Worker) sendExponents(ctx context.Context, e []int16) error {
 // way round; where that fails too, halos go through the coordinator.
 func (s *Space) connect(ctx context.Context, plan *partition.HaloPlan) error {
 	pairs := neighbours(plan)
-	err := s.each(ctx, "tell of neighbours", func(ctx context.Context, k int, w *Worker) error {
-		for _, send := range plan.Blocks[k].Send {
-			o := &proto.Order{What: &proto.Order_Owes{Owes: &proto.Owes{Peer: int32(send.Peer)}}}
-			if err := w.ask(ctx, o, send.LocalRows); err != nil {
-				return err
-			}
-		}
-		expect := &proto.Connect{}
-		for _, p := range pairs {
-			if p.First == k || p.Second == k {
-				expect.Expect = append(expect.Expect, s.peer(p.First+p.Second-k))
-			}
-		}
-		_, err := w.connect(ctx, expect)
-		return err
-	})
-	if err != nil {
+	if err := s.introduce(ctx, plan, pairs); err != nil {
 		return err
 	}
 	left, err := s.dial(ctx, pairs, func(p Pair) (caller, called int) { return p.Second, p.First })
@@ -151,6 +135,26 @@ func (s *Space) connect(ctx context.Context, plan *partition.HaloPlan) error {
 			return nil
 		}
 		_, err := w.connect(ctx, relay)
+		return err
+	})
+}
+
+// introduce tells every worker what it owes to whom, and who may call it.
+func (s *Space) introduce(ctx context.Context, plan *partition.HaloPlan, pairs []Pair) error {
+	return s.each(ctx, "tell of neighbours", func(ctx context.Context, k int, w *Worker) error {
+		for _, send := range plan.Blocks[k].Send {
+			o := &proto.Order{What: &proto.Order_Owes{Owes: &proto.Owes{Peer: int32(send.Peer)}}}
+			if err := w.ask(ctx, o, send.LocalRows); err != nil {
+				return err
+			}
+		}
+		expect := &proto.Connect{}
+		for _, p := range pairs {
+			if p.First == k || p.Second == k {
+				expect.Expect = append(expect.Expect, s.peer(p.First+p.Second-k))
+			}
+		}
+		_, err := w.connect(ctx, expect)
 		return err
 	})
 }

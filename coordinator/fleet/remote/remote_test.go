@@ -265,3 +265,42 @@ func TestALostWorkerIsNamed(t *testing.T) {
 		}
 	}
 }
+
+// Who has a permit of another run, or one that has been used, is sent away, and
+// the run goes on.
+func TestStrangersAreSentAway(t *testing.T) {
+	o, other := gather(t, 1, nil), gather(t, 1, nil)
+	used, err := o.hub.Permit("worker-2", "127.0.0.1:0")
+	if err != nil {
+		t.Fatal(err)
+	}
+	stranger, err := other.hub.Permit("worker-2", "127.0.0.1:0")
+	if err != nil {
+		t.Fatal(err)
+	}
+	stranger.Address = used.Address
+	if err := service.Run(t.Context(), stranger, surroundings); err == nil || !strings.Contains(err.Error(), "certificate") {
+		t.Errorf("a permit of another run: %v", err)
+	}
+	forged := &proto.Permit{Address: used.Address, Name: used.Name, Listen: used.Listen, Authority: used.Authority, Certificate: stranger.Certificate, PrivateKey: stranger.PrivateKey}
+	if err := service.Run(t.Context(), forged, surroundings); err == nil {
+		t.Error("a certificate of another run: no error")
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	first := make(chan error, 1)
+	go func() { first <- service.Run(ctx, used, surroundings) }()
+	if _, err := o.hub.Await(t.Context(), "worker-2"); err != nil {
+		t.Fatal(err)
+	}
+	if err := service.Run(t.Context(), used, surroundings); err == nil || !strings.Contains(err.Error(), "worker-2 is not expected, or has joined before") {
+		t.Errorf("a permit that has been used: %v", err)
+	}
+	cancel()
+	if err := <-first; err == nil {
+		t.Error("a worker that was ended: no error")
+	}
+	s := o.place(t, spacetest.Definite(20, 20), "none")
+	if _, err := s.Check(t.Context()); err != nil {
+		t.Errorf("the run after all that: %v", err)
+	}
+}

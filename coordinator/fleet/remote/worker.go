@@ -34,7 +34,6 @@ type Worker struct {
 	waiting chan answer // guarded by mu
 
 	stepBytes atomic.Int64 // moved in steps, whole frames
-	relayed   atomic.Int64 // numbers forwarded to this worker
 }
 
 // answer is a reply with its numbers.
@@ -117,7 +116,6 @@ func (w *Worker) forward(peer int32, values []float64) error {
 	to, o := w.peers[peer], &proto.Order{What: &proto.Order_Taken{Taken: &proto.Taken{Peer: int32(w.block)}}}
 	if values != nil {
 		o.What = &proto.Order_Relayed{Relayed: &proto.Relayed{Peer: int32(w.block)}}
-		to.relayed.Add(int64(len(values)))
 	}
 	to.pipe.SendBehind(to.encode(o), values) // one that is gone is told of by its own verbs
 	return nil
