@@ -82,6 +82,7 @@ func numbered(short string, n int) string {
 func (r *runner) finish() error {
 	r.rim.Phase(report.Checking)
 	r.rec.Complex = r.sys.complex
+	r.correct()
 	r.knownError()
 	if r.rec.Verdict != report.Met {
 		if err := r.rim.Snapshot(r.done(), r.x); err != nil {

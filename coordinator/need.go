@@ -106,7 +106,7 @@ type FitError struct {
 // Error names the bytes that are missing and every part.
 func (e *FitError) Error() string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "this cannot fit: %.0f bytes are missing (%s needed, %s allowed):", e.Need-e.Allowed, bytesText(e.Need), bytesText(e.Allowed))
+	fmt.Fprintf(&b, "this cannot fit: %s are missing (%s needed, %s allowed):", bytesText(e.Need-e.Allowed), bytesText(e.Need), bytesText(e.Allowed))
 	for i, p := range e.Parts {
 		if i > 0 {
 			b.WriteString(",")
@@ -117,9 +117,38 @@ func (e *FitError) Error() string {
 	return b.String()
 }
 
-// fit chooses the first candidate that fits. why is empty when the basis is in
-// double and the cycle at least the usual one; whatever was asked for stays.
-func (s size) fit(j Job, allowed float64) (f form, why string, err error) {
+// fit chooses the first candidate that fits. Where none does, but conjugate
+// gradients, which keep no basis, could and the file declares a matrix that they
+// are made for, they are taken: s.method says so afterwards. why is empty when
+// the basis is in double and the cycle at least the usual one; whatever was asked
+// for stays.
+func (s *size) fit(j Job, allowed float64) (f form, why string, err error) {
+	f, why, err = s.fitBasis(j, allowed)
+	if err == nil || !automatic(j.Method) || !declaredSymmetric(j) {
+		return f, why, err
+	}
+	without := *s
+	without.method = method.CG
+	if without.total(f) > allowed {
+		return form{}, "", &FitError{Need: without.total(f), Allowed: allowed, Parts: without.parts(f)}
+	}
+	s.method = method.CG
+	return form{method.Single, leastCycle}, "", nil
+}
+
+// declaredSymmetric says that the header of the matrix promises a real form that
+// is symmetric.
+func declaredSymmetric(j Job) bool {
+	in, err := matfile.Open(j.Matrix, j.options())
+	if err != nil {
+		return false // told when the matrix is read
+	}
+	head := in.Header()
+	return in.Close() == nil && (head.Symmetry == "symmetric" && !head.Complex || head.Symmetry == "hermitian")
+}
+
+// fitBasis is fit for the method that s names.
+func (s size) fitBasis(j Job, allowed float64) (f form, why string, err error) {
 	list := candidates(j)
 	least := list[0]
 	for _, f := range list {
@@ -193,7 +222,7 @@ func believable(head matfile.Header) (float64, error) {
 // would not even fit the memory.
 func absurd(head matfile.Header, s size, allowed float64) error {
 	if 64*s.rows > allowed && s.rows > s.entries {
-		return &InputError{fmt.Sprintf("%s: the header promises %d rows, the file has room for at most %.0f entries", head.Path, head.Rows, s.entries)}
+		return &InputError{fmt.Sprintf("%s: the header promises %d rows, which is too large: the file has room for at most %s", head.Path, head.Rows, counted(int(s.entries), "entry", "entries"))}
 	}
 	return nil
 }

@@ -3,6 +3,8 @@ package coordinator
 import (
 	"errors"
 	"math"
+	"os"
+	"path/filepath"
 	"strings"
 	"testing"
 
@@ -28,7 +30,7 @@ func TestFitKeepsItsWord(t *testing.T) {
 		var fit *FitError
 		switch {
 		case errors.As(err, &fit):
-			if fit.Need <= allowed || !strings.Contains(err.Error(), "bytes are missing") {
+			if fit.Need <= allowed || !strings.Contains(err.Error(), "are missing") {
 				t.Fatalf("refused %v of %v: %v", fit.Need, allowed, err)
 			}
 			return
@@ -39,6 +41,34 @@ func TestFitKeepsItsWord(t *testing.T) {
 			t.Fatalf("%+v was chosen for %+v", f, j)
 		}
 	})
+}
+
+// Where nothing with a basis fits, a matrix that is declared symmetric is left to
+// conjugate gradients; a general one is refused.
+func TestFitWithoutBasis(t *testing.T) {
+	folder := t.TempDir()
+	for _, symmetry := range []string{"symmetric", "general"} {
+		path := filepath.Join(folder, symmetry+".mtx")
+		if err := os.WriteFile(path, []byte("%%MatrixMarket matrix coordinate real "+symmetry+"\n1 1 1\n1 1 2\n"), 0o644); err != nil {
+			t.Fatal(err)
+		}
+		s := size{rows: 1e6, entries: 7e6, columns: 1, recycle: recycled, precondition: "ilu0"}
+		without := s
+		without.method = method.CG
+		_, _, err := s.fit(Job{Matrix: path}, without.total(form{})*1.01)
+		switch {
+		case symmetry == "symmetric" && (err != nil || s.method != method.CG):
+			t.Errorf("refused: %v, method %q", err, s.method)
+		case symmetry == "general" && err == nil:
+			t.Errorf("%+v fits", s)
+		}
+		if symmetry == "symmetric" {
+			s.method = ""
+			if _, _, err := s.fit(Job{Matrix: path}, 1e6); err == nil || strings.Contains(err.Error(), "basis") {
+				t.Errorf("the refusal names what is not needed: %v", err)
+			}
+		}
+	}
 }
 
 // More memory never gives a shorter cycle in the same form.

@@ -1,11 +1,16 @@
 package coordinator
 
 import (
+	"errors"
 	"fmt"
 	"os"
+	"runtime"
+	"strings"
 
 	"rowstead/coordinator/method"
+	"rowstead/coordinator/report"
 	"rowstead/partition"
+	"rowstead/partition/matfile"
 	"rowstead/partition/order"
 )
 
@@ -16,6 +21,8 @@ type plan struct {
 	precondition string
 	conjugate    bool // prepare for conjugate gradients first
 	form         form
+	// spared says that the memory left conjugate gradients alone.
+	spared bool
 }
 
 // strongly is the share of the bandwidth that must remain at most for a new
@@ -27,6 +34,7 @@ const strongly = 0.5
 func (r *runner) chooseOrder(p *plan) error {
 	m := r.sys.matrix
 	blocks := max(1, r.job.Blocks)
+	r.chooseBase()
 	if r.job.Cuts != "" {
 		return r.readCuts(p)
 	}
@@ -65,6 +73,13 @@ func (r *runner) chooseOrder(p *plan) error {
 	var err error
 	p.cuts, err = partition.CutByEntries(r.sys.matrix.Start, blocks)
 	return err
+}
+
+// chooseBase notes an index base that the matrix has no use for.
+func (r *runner) chooseBase() {
+	if format := r.sys.head.Format; r.job.IndexBase != matfile.UnknownBase && format != "triplets" {
+		r.choose("index-base", "its own", "a file of the format "+format+" says itself from where it counts", true)
+	}
 }
 
 // readCuts takes the blocks from a file; the order then stays that of the
@@ -120,5 +135,63 @@ func (r *runner) chooseConjugate(p *plan, d order.Diagonal) error {
 		return nil
 	}
 	p.conjugate = symmetry.Exact && d.Negative.Count == 0 && d.Zero.Count == 0 && d.Missing.Count == 0
+	if r.need.method == method.CG {
+		return r.onlyConjugate(p)
+	}
 	return nil
+}
+
+// onlyConjugate takes conjugate gradients for good where nothing else fits the
+// memory, or refuses where the matrix is not made for them.
+func (r *runner) onlyConjugate(p *plan) error {
+	any := r.need
+	any.method = Auto
+	_, _, err := any.fitBasis(r.job, r.most)
+	if err == nil {
+		return nil
+	}
+	if !p.conjugate {
+		return err
+	}
+	r.job.Method, p.spared = method.CG, true
+	var fit *FitError
+	if errors.As(err, &fit) {
+		r.why["method"] = fmt.Sprintf("the matrix is symmetric, and what keeps a basis takes %s at the least", bytesText(fit.Need))
+	}
+	return nil
+}
+
+// correct puts the reasons of choices right that the run itself has overtaken.
+func (r *runner) correct() {
+	for i := range r.rec.Choices {
+		c := &r.rec.Choices[i]
+		switch {
+		case c.Name == "method" && r.plan.spared:
+			c.Asked, c.Reason = false, r.why["method"]
+		case c.Name == "sketch" && c.Asked:
+			// What is said of the usual length does not hold.
+			if _, rest, found := strings.Cut(c.Reason, "; "); found {
+				c.Reason = rest
+			}
+		case c.Name == "precondition":
+			r.fellBack(c)
+		case c.Name == "threads" && r.job.Threads > runtime.NumCPU():
+			c.Reason = fmt.Sprintf("more than the %d cores there are", runtime.NumCPU())
+		}
+	}
+	if r.plan.spared && r.rec.Verdict == report.Short && r.rec.Reason != ReasonInterrupted && r.rec.Reason != ReasonTime {
+		r.rec.Advice = "more --memory, so that other methods than conjugate gradients fit"
+	}
+}
+
+// fellBack gives a preconditioner that could not be built as planned the reason
+// for that alone.
+func (r *runner) fellBack(c *report.Choice) {
+	for k, f := range r.placed.Factors() {
+		if f.Reason == "" || f.Kind == r.plan.precondition {
+			continue
+		}
+		c.Reason = fmt.Sprintf("%s was planned; block %d: %s", r.plan.precondition, k+1, f.Reason)
+		return
+	}
 }

@@ -40,13 +40,29 @@ func look(j Job) (matfile.Header, error) {
 	}
 	switch {
 	case head.Rows != head.Cols:
-		return head, &InputError{fmt.Sprintf("%s: %d equations in %d unknowns; solve needs a square matrix", j.Matrix, head.Rows, head.Cols)}
+		return head, &InputError{fmt.Sprintf("%s: %s in %s; solve needs a square matrix", j.Matrix, counted(head.Rows/realForm(head), "equation", "equations"), counted(head.Cols/realForm(head), "unknown", "unknowns"))}
 	case head.Rows == 0:
 		return head, &InputError{j.Matrix + ": the matrix has no rows"}
 	case j.Right == "" && !j.Trial && head.Format != harwellBoeing:
 		return head, &InputError{"there is no right side: write rowstead solve A.mtx b.mtx, or --trial for b = A·(1, …, 1)"}
 	}
 	return head, nil
+}
+
+// counted writes a count with its noun.
+func counted(n int, one, many string) string {
+	if n == 1 {
+		return "1 " + one
+	}
+	return fmt.Sprintf("%d %s", n, many)
+}
+
+// realForm is how many rows of the real form a row of the file has.
+func realForm(head matfile.Header) int {
+	if head.Complex {
+		return 2
+	}
+	return 1
 }
 
 // Inspect reads the headers of the inputs, without taking memory for them, and
@@ -146,7 +162,7 @@ func (s *system) begin(j Job) error {
 		}
 	}
 	if len(s.guess) != len(s.right) || len(s.guess[0]) != s.matrix.Rows {
-		return &InputError{fmt.Sprintf("the guess has %d columns of %d, the right side %d of %d", len(s.guess), len(s.guess[0]), len(s.right), s.matrix.Rows)}
+		return &InputError{fmt.Sprintf("the guess has %s of %d, the right side %d of %d", counted(len(s.guess), "column", "columns"), len(s.guess[0]), len(s.right), s.matrix.Rows)}
 	}
 	return nil
 }
@@ -170,7 +186,7 @@ func (s *system) vectors(j Job, path, role string) (columns [][]float64, isReal 
 		if s.complex {
 			unit = 2
 		}
-		return nil, false, &InputError{fmt.Sprintf("%s: the %s has %d entries, the matrix %d rows", path, role, d.Rows/unit, s.matrix.Rows/unit)}
+		return nil, false, &InputError{fmt.Sprintf("%s: the %s has %s, the matrix %s", path, role, counted(d.Rows/unit, "entry", "entries"), counted(s.matrix.Rows/unit, "row", "rows"))}
 	}
 	if d.Cols == 0 {
 		return nil, false, &InputError{fmt.Sprintf("%s: the %s has no columns", path, role)}

@@ -163,7 +163,7 @@ func (a *app) commands() *cobra.Command {
 		CompletionOptions:  cobra.CompletionOptions{DisableDefaultCmd: true},
 		RunE: func(c *cobra.Command, args []string) error {
 			if len(args) > 0 {
-				return usage("there is no command %q; \"rowstead help\" lists them", misspelt(args))
+				return noCommand(args[0])
 			}
 			showHelp(a.stdout, c)
 			return nil
@@ -171,7 +171,12 @@ func (a *app) commands() *cobra.Command {
 	}
 	root.SetOut(a.stdout)
 	root.SetErr(a.stderr)
-	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error { return flagError(c.Name(), err) })
+	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
+		if word := firstWord(a.asked); c == root && word != "" {
+			return noCommand(word)
+		}
+		return flagError(c.Name(), err)
+	})
 	root.SetHelpFunc(func(c *cobra.Command, _ []string) { showHelp(a.stdout, c) })
 	root.SetHelpCommand(a.helpCommand(root))
 	cobra.EnableCommandSorting = false
@@ -184,14 +189,18 @@ func (a *app) commands() *cobra.Command {
 	return root
 }
 
-// misspelt is the first word that is no flag: what was meant as a command.
-func misspelt(args []string) string {
+// firstWord is the first argument that is no flag: what was meant as a command.
+func firstWord(args []string) string {
 	for _, arg := range args {
 		if !strings.HasPrefix(arg, "-") {
 			return arg
 		}
 	}
-	return args[0]
+	return ""
+}
+
+func noCommand(name string) error {
+	return usage("there is no command %q; \"rowstead help\" lists them", name)
 }
 
 // helpCommand prints the help of a command by its name.
@@ -202,7 +211,7 @@ func (a *app) helpCommand(root *cobra.Command) *cobra.Command {
 		RunE: func(_ *cobra.Command, args []string) error {
 			c, rest, err := root.Find(args)
 			if err != nil || len(rest) > 0 {
-				return usage("there is no command %q; \"rowstead help\" lists them", strings.Join(args, " "))
+				return noCommand(strings.Join(args, " "))
 			}
 			showHelp(a.stdout, c)
 			return nil

@@ -27,7 +27,7 @@ func (a *app) resumeCommand() *cobra.Command {
 	f.StringVar(&changes.job.Out, "out", "", "write the answer to `FILE` instead")
 	f.BoolVar(&changes.job.Overwrite, "overwrite", false, "replace existing files")
 	f.Var(timeValue{&changes.job.TimeLimit}, "time-limit", "stop after this `TIME`, such as 10m, and keep the answer so far")
-	f.StringVar(&changes.report, "report", "", "write report.txt, report.json and report.html to folder `DIR`")
+	f.StringVar(&changes.report, "report", "", "write report.txt, report.json, report.html and convergence.svg to folder `DIR`")
 	a.jsonAndQuiet(c)
 	c.RunE = func(_ *cobra.Command, args []string) error {
 		s, err := a.takeUp(args[0])

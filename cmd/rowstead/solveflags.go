@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"os"
+	"runtime"
 	"sort"
 	"strings"
 	"time"
@@ -67,6 +68,13 @@ const (
 // mostHere is how many worker processes one machine is asked for at most.
 const mostHere = 256
 
+// Bounds of a sketch: below the least it embeds nothing, beyond the most it is
+// longer than any cycle needs.
+const leastSketch, mostSketch = 64, 1_000_000
+
+// mostThreads is beyond the cores of any desktop machine.
+const mostThreads = 4096
+
 // add declares the flags in the order in which the help lists them.
 func (s *solveFlags) add(f *pflag.FlagSet) {
 	j := &s.job
@@ -80,7 +88,7 @@ func (s *solveFlags) add(f *pflag.FlagSet) {
 	f.StringVar(&j.Method, "method", "auto", "`NAME`: auto, sketched, orthogonal or cg")
 	f.IntVar(&j.Window, "window", 0, "make a window step orthogonal to the last `COUNT` vectors (4)")
 	f.IntVar(&j.Cycle, "cycle", 0, "at most `COUNT` steps between corrections of x (300, or what the memory allows)")
-	f.IntVar(&j.SketchRows, "sketch-rows", 0, "length of a sketch, `COUNT` (four times the cycle)")
+	f.IntVar(&j.SketchRows, "sketch-rows", 0, "length of a sketch, `COUNT` from 64 (four times the cycle)")
 	f.Uint64Var(&j.Seed, "seed", defaultSeed, "`NUMBER` that every random choice follows from (1)")
 	f.IntVar(&j.Blocks, "blocks", 0, "cut the rows into `COUNT` blocks (1)")
 	f.IntVar(&j.Here, "here", 0, "hold the blocks in `COUNT` worker processes on this machine, one each (none)")
@@ -91,7 +99,7 @@ func (s *solveFlags) add(f *pflag.FlagSet) {
 	f.Var(timeValue{&j.TimeLimit}, "time-limit", "stop after this `TIME`, such as 10m, and keep the answer so far")
 	f.Var(timeValue{&j.SnapshotEvery}, "snapshot", "keep the answer so far every `TIME` (5m)")
 	f.IntVar(&s.indexBase, "index-base", -1, "plain triplets count from `0|1`")
-	f.StringVar(&s.report, "report", "", "write report.txt, report.json and report.html to folder `DIR`")
+	f.StringVar(&s.report, "report", "", "write report.txt, report.json, report.html and convergence.svg to folder `DIR`")
 }
 
 // jsonAndQuiet declares what every run has for its output.
@@ -114,10 +122,12 @@ func (s *solveFlags) check(f *pflag.FlagSet) error {
 	fault(!among(j.Precondition, "auto", "none", "diagonal", "ilu0", "ilut"), "--precondition %q: expected auto, none, diagonal, ilu0 or ilut", j.Precondition)
 	fault(!among(j.Method, method.Auto, method.Sketched, method.Orthogonal, method.CG), "--method %q: expected auto, sketched, orthogonal or cg", j.Method)
 	fault(!among(j.Basis, "auto", "double", "single", "replay"), "--basis %q: expected auto, double, single or replay", j.Basis)
-	for name, value := range map[string]int{"window": j.Window, "cycle": j.Cycle, "sketch-rows": j.SketchRows, "blocks": j.Blocks, "here": j.Here, "threads": j.Threads} {
+	for name, value := range map[string]int{"window": j.Window, "cycle": j.Cycle, "blocks": j.Blocks, "here": j.Here, "threads": j.Threads} {
 		fault(f.Changed(name) && value < 1, "--%s %d: expected a whole number from 1", name, value)
 	}
 	fault(j.Basis == "replay" && j.Method == method.Orthogonal, "--basis replay has window steps alone; take --method sketched with it")
+	fault(f.Changed("sketch-rows") && (j.SketchRows < leastSketch || j.SketchRows > mostSketch), "--sketch-rows %d: expected between %d and %d", j.SketchRows, leastSketch, mostSketch)
+	fault(j.Threads > mostThreads, "--threads %d: expected at most %d; this machine has %d cores", j.Threads, mostThreads, runtime.NumCPU())
 	fault(j.Here > mostHere, "--here %d: expected at most %d worker processes", j.Here, mostHere)
 	fault(j.Here > 0 && j.Blocks > 0, "--here and --blocks both say how many blocks there are; give one")
 	fault(j.Blocks > 0 && j.Cuts != "", "--blocks and --cuts both say where blocks begin; give one")

@@ -153,8 +153,8 @@ func (e *endless) Read(b []byte) (int, error) {
 func TestInflatingBombs(t *testing.T) {
 	for name, test := range map[string]struct{ head, piece, want string }{
 		"blanks without line end": {coordinate + "2 2 1\n", strings.Repeat(" ", 1<<16), "lines of at most"},
-		"line ends":               {coordinate + "2 2 1\n", strings.Repeat("\n", 1<<16), "expected 1 entries"},
-		"entries":                 {coordinate + "2 2 1\n", strings.Repeat("1 1 1\n", 1<<13), "expected the end of the file after 1 entries"},
+		"line ends":               {coordinate + "2 2 1\n", strings.Repeat("\n", 1<<16), "expected 1 entry"},
+		"entries":                 {coordinate + "2 2 1\n", strings.Repeat("1 1 1\n", 1<<13), "expected the end of the file after 1 entry"},
 		"comments":                {"%%MatrixMarket matrix coordinate real general\n", strings.Repeat("% comment\n", 1<<12), "the line with the sizes"},
 		"first line":              {"%%MatrixMarket ", strings.Repeat("x", 1<<16), "lines of at most"},
 		"numbers of an array":     {"%%MatrixMarket matrix array real general\n2 1\n", strings.Repeat("1\n", 1<<15), "after 2 numbers"},

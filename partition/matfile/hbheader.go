@@ -209,7 +209,7 @@ func (f *hbFile) checkCards(in *stream) error {
 		}
 	}
 	if in.size >= 0 && f.head.Stored > in.size {
-		return &FileError{Path: f.path, Line: 3, Expected: fmt.Sprintf("%d entries", f.head.Stored), Found: fmt.Sprintf("a file of %d bytes", in.size)}
+		return &FileError{Path: f.path, Line: 3, Expected: countOf(f.head.Stored, "entry", "entries"), Found: "a file of " + countOf(in.size, "byte", "bytes")}
 	}
 	return nil
 }

@@ -125,7 +125,7 @@ func TestMatrixMarketRefusals(t *testing.T) {
 		"rows nearly all empty":     {coordinate + "2000000000 2000000000 1\n1 1 1\n", "expected rows in proportion to 1 entries"},
 		"no rows":                   {coordinate + "0 3 0\n", "line 2: expected between 1"},
 		"too few entries":           {coordinate + "2 2 3\n1 1 1\n%\n2 2 2\n", "line 5: expected 3 entries, found the end of the file after 2"},
-		"too many entries":          {coordinate + "2 2 1\n%\n1 1 1\n\n2 2 2\n", "line 6: expected the end of the file after 1 entries, found another entry"},
+		"too many entries":          {coordinate + "2 2 1\n%\n1 1 1\n\n2 2 2\n", "line 6: expected the end of the file after 1 entry, found another entry"},
 		"row 0":                     {coordinate + "2 2 1\n0 1 1\n", `line 3: expected a row index between 1 and 2, found "0"`},
 		"row beyond":                {coordinate + "2 2 1\n3 1 1\n", `line 3: expected a row index between 1 and 2, found "3"`},
 		"column beyond":             {coordinate + "2 2 1\n1 3 1\n", `line 3: expected a column index between 1 and 2, found "3"`},

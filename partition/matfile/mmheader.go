@@ -127,7 +127,7 @@ func (f *mmFile) sizes(text []byte) error {
 	for k, word := range words {
 		v, ok := wholeNumber(word)
 		if !ok {
-			return f.refuse(want, word)
+			return f.refuse(want+faultOfCount(word), word)
 		}
 		n[k] = v
 	}
@@ -149,7 +149,7 @@ func (f *mmFile) checkPromise() error {
 		least = 4
 	}
 	if f.in.size >= 0 && f.head.Stored > f.in.size/least+1 {
-		return &FileError{Path: f.in.path, Line: f.lines, Expected: fmt.Sprintf("%d entries", f.head.Stored), Found: fmt.Sprintf("a file of %d bytes", f.in.size)}
+		return &FileError{Path: f.in.path, Line: f.lines, Expected: countOf(f.head.Stored, "entry", "entries"), Found: "a file of " + countOf(f.in.size, "byte", "bytes")}
 	}
 	return nil
 }
@@ -164,6 +164,29 @@ func denseCount(rows, cols int, symmetry string) int64 {
 		return n * (n - 1) / 2
 	}
 	return n * int64(cols)
+}
+
+// faultOfCount says why a word is no count, where it is a whole number.
+func faultOfCount(word []byte) string {
+	digits := bytes.TrimLeft(word, "+-")
+	if len(digits) == 0 || len(bytes.Trim(digits, "0123456789")) > 0 {
+		return ""
+	}
+	if word[0] == '-' {
+		return ", none of them negative"
+	}
+	if len(digits) > 18 {
+		return ", none of them beyond 18 digits: this count is too large"
+	}
+	return ""
+}
+
+// countOf writes a count with its noun.
+func countOf(n int64, one, many string) string {
+	if n == 1 {
+		return "1 " + one
+	}
+	return fmt.Sprintf("%d %s", n, many)
 }
 
 // wholeNumber reads an unsigned decimal number of at most 18 digits.

@@ -53,7 +53,14 @@ func (h *Header) setShape(rows, cols int64, line int) error {
 		most, scale = most/2, 2
 	}
 	if rows < 1 || cols < 1 || rows > most || cols > most {
-		return &FileError{Path: h.Path, Line: line, Expected: fmt.Sprintf("between 1 and %d rows and columns", most), Found: fmt.Sprintf("%d by %d", rows, cols)}
+		why := ""
+		switch {
+		case rows > most || cols > most:
+			why = ", which is too large"
+		case rows < 0 || cols < 0:
+			why = ", which is negative"
+		}
+		return &FileError{Path: h.Path, Line: line, Expected: fmt.Sprintf("between 1 and %d rows and columns", most), Found: fmt.Sprintf("%d by %d%s", rows, cols, why)}
 	}
 	h.Rows, h.Cols = scale*int(rows), scale*int(cols)
 	if h.Symmetry != "general" && rows != cols {

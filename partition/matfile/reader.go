@@ -104,7 +104,7 @@ func (b *entryBody) next(dst *csr.Triplets) error {
 	}
 	c, err := b.take(b.pipe)
 	if err == io.EOF && b.count < b.stored {
-		return &FileError{Path: b.in.path, Line: b.lines, Expected: fmt.Sprintf("%d entries", b.stored), Found: fmt.Sprintf("the end of the file after %d", b.count)}
+		return &FileError{Path: b.in.path, Line: b.lines, Expected: countOf(b.stored, "entry", "entries"), Found: fmt.Sprintf("the end of the file after %d", b.count)}
 	}
 	if err != nil {
 		return err
@@ -121,7 +121,7 @@ func (b *entryBody) next(dst *csr.Triplets) error {
 // tooMany finds the line of the first entry that the header does not promise.
 func (b *entryBody) tooMany(c *chunk) error {
 	line := b.lines + lineOfEntry(c.text, b.stored-b.count, b.layout)
-	return &FileError{Path: b.in.path, Line: line, Expected: fmt.Sprintf("the end of the file after %d entries", b.stored), Found: "another entry"}
+	return &FileError{Path: b.in.path, Line: line, Expected: "the end of the file after " + countOf(b.stored, "entry", "entries"), Found: "another entry"}
 }
 
 // lineOfEntry returns the line within text of its k-th entry.

@@ -25,6 +25,9 @@ func openFormat(in *stream, o Options, purpose use) (*Reader, error) {
 	if start, err = in.in.Peek(min(400, in.in.Size())); err != nil && err != io.EOF {
 		return nil, in.readError(err, 1)
 	}
+	if misspeltBanner(start) {
+		return nil, &FileError{Path: in.path, Line: 1, Expected: mmBanner + " as the first word", Found: quote(firstWord(start))}
+	}
 	if looksBoeing(start) {
 		return openHB(in, purpose)
 	}
@@ -52,6 +55,21 @@ func foreign(start []byte) string {
 		}
 	}
 	return ""
+}
+
+// misspeltBanner says that the first word is meant to be the banner of a Matrix
+// Market file: it begins with the mark of a comment and "matrixm".
+func misspeltBanner(start []byte) bool {
+	word := firstWord(start)
+	return len(word) > 0 && word[0] == '%' && hasPrefixFold(bytes.TrimLeft(word, "%"), "matrixm")
+}
+
+func firstWord(start []byte) []byte {
+	line, _, _ := bytes.Cut(start, []byte("\n"))
+	if words := bytes.Fields(line); len(words) > 0 {
+		return words[0]
+	}
+	return nil
 }
 
 func hasPrefixFold(b []byte, prefix string) bool {

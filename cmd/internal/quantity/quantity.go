@@ -48,18 +48,16 @@ func Bytes(text string) (int64, error) {
 	return 0, fmt.Errorf("%q has the unit %q: use kB, MB, GB, KiB, MiB or GiB", text, suffix)
 }
 
-// Duration reads a time such as "10m", "90s", "1h30m" or a plain number of
-// seconds. It is positive.
+// Duration reads a time such as "10m", "90s" or "1h30m", always with its unit.
+// It is positive.
 func Duration(text string) (time.Duration, error) {
 	trimmed := strings.TrimSpace(text)
 	d, err := time.ParseDuration(trimmed)
+	if _, plain := strconv.ParseFloat(trimmed, 64); plain == nil && trimmed != "0" {
+		return 0, fmt.Errorf("%q has no unit: write it as %ss or %sm", text, trimmed, trimmed)
+	}
 	if err != nil {
-		var seconds float64
-		if seconds, err = strconv.ParseFloat(trimmed, 64); err == nil && math.Abs(seconds) < 1e9 {
-			d = time.Duration(seconds * float64(time.Second))
-		} else {
-			return 0, fmt.Errorf("%q is not a time: write it as 90s, 10m or 1h30m", text)
-		}
+		return 0, fmt.Errorf("%q is not a time: write it as 90s, 10m or 1h30m", text)
 	}
 	if d <= 0 {
 		return 0, fmt.Errorf("%q is not a usable time: it must be above zero", text)

@@ -25,7 +25,7 @@ func TestDuration(t *testing.T) {
 		text string
 		want time.Duration
 	}{
-		{"10m", 10 * time.Minute}, {"1h30m", 90 * time.Minute}, {"90", 90 * time.Second}, {"0.5", time.Second / 2},
+		{"10m", 10 * time.Minute}, {"1h30m", 90 * time.Minute}, {"90s", 90 * time.Second}, {"0.5s", time.Second / 2}, {"90", 0}, {"0", 0},
 		{"", 0}, {"soon", 0}, {"0s", 0}, {"-3s", 0}, {"NaN", 0}, {"1e300", 0},
 	} {
 		got, err := Duration(c.text)

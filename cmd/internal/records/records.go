@@ -138,7 +138,16 @@ func (s Store) Find(id string) (Run, error) {
 	case 0:
 		return Run{}, fmt.Errorf("no run is called %q; \"rowstead runs\" lists them", id)
 	}
-	return Run{}, fmt.Errorf("%q is the beginning of %d runs; give more of the name", id, len(found))
+	return Run{}, fmt.Errorf("%q is the beginning of %d runs; give more of the name: %s", id, len(found), listed(found))
+}
+
+// listed names up to ten runs, the newest.
+func listed(ids []string) string {
+	const most = 10
+	if len(ids) <= most {
+		return strings.Join(ids, ", ")
+	}
+	return strings.Join(ids[len(ids)-most:], ", ") + " and older ones"
 }
 
 // ids lists the folders of runs, oldest first.
