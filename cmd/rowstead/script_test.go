@@ -31,6 +31,7 @@ func TestMain(m *testing.M) {
 //	nofiles PATTERN ...      no file has such a name
 //	interrupt N rowstead ... starts it, sends N interrupts once it is stepping; the status is 130
 //	killed rowstead ...      starts it and kills it once it has a snapshot
+//	lastrun                  sets $RUN to the last run of the list in standard output
 //	tinydisk DIR BYTES       a full disk, where condition [tinydisk] holds
 func TestScripts(t *testing.T) {
 	testscript.Run(t, testscript.Params{
@@ -42,7 +43,7 @@ func TestScripts(t *testing.T) {
 		Condition: condition,
 		Cmds: map[string]func(ts *testscript.TestScript, neg bool, args []string){
 			"status": scriptStatus, "object": scriptObject, "oneline": scriptOneLine, "nofiles": scriptNoFiles,
-			"interrupt": scriptInterrupt, "tinydisk": scriptTinyDisk, "killed": scriptKilled,
+			"interrupt": scriptInterrupt, "tinydisk": scriptTinyDisk, "killed": scriptKilled, "lastrun": scriptLastRun,
 		},
 	})
 }
@@ -173,6 +174,16 @@ func background(ts *testscript.TestScript, args []string, stdout, stderr *bytes.
 	done = make(chan error, 1)
 	go func() { done <- c.Wait() }()
 	return c, done
+}
+
+// scriptLastRun takes the identifier from what "runs --json" has printed.
+func scriptLastRun(ts *testscript.TestScript, neg bool, args []string) {
+	var list struct{ Runs []struct{ ID string } }
+	ts.Check(json.Unmarshal([]byte(ts.ReadFile("stdout")), &list))
+	if len(list.Runs) == 0 {
+		ts.Fatalf("there are no runs")
+	}
+	ts.Setenv("RUN", list.Runs[len(list.Runs)-1].ID)
 }
 
 // scriptKilled starts the program, waits until it has a snapshot, and kills that
