@@ -7,6 +7,7 @@ import (
 	"os"
 	"os/exec"
 	"os/signal"
+	"runtime"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -58,6 +59,9 @@ func serve(stdin io.Reader, exit func(int)) error {
 			state, err := memory.Now()
 			return state.Free, err
 		},
+		// Several processes share the cores: more runnable threads than the rows have
+		// only take turns at looking for work.
+		Threads: func(count int) { runtime.GOMAXPROCS(count) },
 		// A verb may take long, and nobody waits for it any more.
 		Lost: func() { time.AfterFunc(lingering, func() { exit(statusOther) }) },
 	})

@@ -78,6 +78,9 @@ func (s *session) place(o *proto.Place) error {
 	p.start = make([]int, 1, p.rows()+1)
 	p.col, p.val = make([]int32, 0, o.Entries), make([]float64, 0, o.Entries)
 	s.placing = p
+	if s.options.Threads != nil {
+		s.options.Threads(p.threads)
+	}
 	return nil
 }
 

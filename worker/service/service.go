@@ -33,6 +33,8 @@ type Options struct {
 	// Free returns how many bytes could be used; an error: unknown, nothing is
 	// refused.
 	Free func() (int64, error)
+	// Threads, if not nil, is told how many threads the rows will be worked on with.
+	Threads func(count int)
 	// Lost, if not nil, is called when the connection to the coordinator has ended
 	// or the coordinator has said goodbye; a verb may still be in work then.
 	Lost func()
