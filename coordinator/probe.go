@@ -14,6 +14,9 @@ const (
 	probeShare = 50
 	probeLeast = 3
 	probeMost  = 20
+
+	conjugateShare = 10
+	conjugateMost  = 300
 )
 
 // probe looks for the directions in which A hides an error of x. The bound of
@@ -43,7 +46,7 @@ func (r *runner) probe(ctx context.Context, last *method.Result, side *report.Si
 	steps := min(probeMost, max(probeLeast, last.Products/probeShare))
 	o := method.Options{Method: method.Orthogonal, Tolerance: 1e-12, Cycle: steps, Recycle: -1}
 	if r.plan.conjugate { // its steps are cheap and see less each
-		steps *= 3
+		steps = min(conjugateMost, max(probeLeast, last.Products/conjugateShare))
 		o.Method = method.CG
 	}
 	o.MaxProducts = steps + 1
@@ -56,16 +59,26 @@ func (r *runner) probe(ctx context.Context, last *method.Result, side *report.Si
 	return placed.SetGuess(ctx, x)
 }
 
-// weigh takes a v for which the solve of the probe stands into the hints.
+// weigh takes the v that a probe has reached into the hints, in scaled rows and
+// in the units of the file: ‖A⁻¹‖ ≥ ‖v‖/‖A·v‖ in either, and ‖A‖₂ is at least
+// ‖D·A‖_F/√n or ‖A‖∞/√n. v holds ‖A·v − ξ‖ and ‖ξ‖, whose sum bounds ‖A·v‖.
 func weigh(last *method.Result, v method.Residuals, rows int) {
-	image := v.InnerRight + v.Inner
-	if !v.Finite || image == 0 || v.Solution == 0 {
+	if !v.Finite || v.Solution == 0 {
 		return
 	}
-	inverse := v.Solution / image
-	last.ConditionHint = max(last.ConditionHint, inverse*v.InnerMatrix/math.Sqrt(float64(rows)))
-	if r := last.Residuals; r.Solution > 0 {
-		last.ForwardError = max(last.ForwardError, min(1, inverse*r.Inner/r.Solution))
+	r, root := last.Residuals, math.Sqrt(float64(rows))
+	for i, c := range [...]struct{ image, matrix, residual float64 }{
+		{v.InnerRight + v.Inner, v.InnerMatrix, r.Inner},
+		{v.Right + v.True, v.MatrixMax, r.True},
+	} {
+		inverse := v.Solution / c.image
+		if i == 0 && last.Method == method.CG || math.IsInf(inverse, 0) || math.IsNaN(inverse) {
+			continue // x is not in the units of the scaling that CG needs
+		}
+		last.ConditionHint = max(last.ConditionHint, inverse*c.matrix/root)
+		if r.Solution > 0 {
+			last.ForwardError = max(last.ForwardError, min(1, inverse*c.residual/r.Solution))
+		}
 	}
 }
 

@@ -41,7 +41,10 @@ func solveConjugate(ctx context.Context, sp ConjugateSpace, o Options, res *Resu
 		}
 	}
 	res.Residuals, res.Reason = r.residuals, r.reason
-	res.ConditionHint, res.ForwardError = hints(r.residuals, r.inverse, sp.Rows())
+	// x is not in the units of S·A·S, so the bound is in those of the file.
+	file := r.residuals
+	file.Inner, file.InnerRight, file.InnerMatrix = file.True, file.Right, file.MatrixMax
+	res.ConditionHint, res.ForwardError = hints(file, 0, sp.Rows())
 	return nil
 }
 
