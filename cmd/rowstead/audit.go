@@ -59,6 +59,13 @@ func base(value int, given bool) (matfile.IndexBase, error) {
 	return matfile.UnknownBase, usage("--index-base %d: expected 0 or 1", value)
 }
 
+func baseText(b matfile.IndexBase) string {
+	if b == matfile.OneBased {
+		return "1"
+	}
+	return "0"
+}
+
 // audit checks the files and prints the result.
 func (a *app) audit(files audit.Files, o audit.Options) error {
 	rec := report.New("audit")
@@ -83,6 +90,9 @@ func (a *app) audit(files audit.Files, o audit.Options) error {
 		return &failure{statusInput, err}
 	}
 	fillAudit(rec, result)
+	if o.Read.IndexBase != matfile.UnknownBase {
+		rec.Choices = append(rec.Choices, report.Choice{Name: "index-base", Value: baseText(o.Read.IndexBase), Reason: "for plain triplets alone; other formats say themselves from where they count", Asked: true})
+	}
 	rec.Answer = files.Answer
 	rec.Seconds.Check = report.Number(time.Since(rec.Started).Seconds())
 	rec.Seconds.Total, rec.CoordinatorPeakBytes = rec.Seconds.Check, memory.Peak()

@@ -193,6 +193,9 @@ func (a *app) tell(rec *report.Record) {
 		head, _, _ := strings.Cut(rec.Text(), "\n")
 		if rec.Job == "solve" && rec.Answer != "" {
 			head += " The answer is in " + rec.Answer + "."
+			if rec.AnswerNote != "" {
+				head += " Beside it: " + rec.AnswerNote + "."
+			}
 		}
 		fmt.Fprintf(a.stdout, "%s %s\n", head, report.Caution)
 	default:

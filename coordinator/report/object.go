@@ -36,6 +36,8 @@ type object struct {
 	Record        string         `json:"record"`
 	// Only a trial has the error against its known answer.
 	KnownError *Number `json:"known_error,omitempty"`
+	// Only where there is something to say: of other short answers.
+	AnswerNote string `json:"answer_note,omitempty"`
 }
 
 type workerObject struct {
@@ -58,7 +60,7 @@ func (r *Record) JSON() []byte {
 		Backward: r.Residuals.Backward, ConditionHint: r.Residuals.ConditionHint, ForwardError: r.Residuals.ForwardError,
 		Steps: r.Steps, FullSteps: r.FullSteps, Cycles: r.Cycles, Products: r.Products,
 		Seconds: r.Seconds, Traffic: r.Traffic, PeakBytes: r.CoordinatorPeakBytes,
-		Seed: r.Seed, Answer: r.Answer, Record: r.Path,
+		Seed: r.Seed, Answer: r.Answer, Record: r.Path, AnswerNote: r.AnswerNote,
 	}
 	if o.Cuts == nil {
 		o.Cuts = []int{}

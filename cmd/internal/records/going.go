@@ -1,9 +1,11 @@
 package records
 
 import (
+	"errors"
 	"io"
 	"os"
 	"path/filepath"
+	"time"
 
 	"rowstead/coordinator/report"
 )
@@ -18,21 +20,36 @@ func (r Run) Hold() (io.Closer, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := lock(f); err != nil {
+	err = lock(f)
+	for try := 0; try < holdTries && errors.Is(err, errBusy); try++ {
+		time.Sleep(holdPause) // somebody may be looking whether the run is alive
+		err = lock(f)
+	}
+	if err != nil {
 		f.Close() // nothing was written
 		return nil, err
 	}
 	return f, nil
 }
 
-// Alive says that some process holds the run.
+// How often and how long Hold waits for one who only looks.
+const (
+	holdTries = 10
+	holdPause = 5 * time.Millisecond
+)
+
+// errBusy says that another one has locked the file.
+var errBusy = errors.New("another process holds the run")
+
+// Alive says that some process holds the run; never where files cannot be
+// locked.
 func (r Run) Alive() bool {
 	f, err := os.OpenFile(filepath.Join(r.Folder, goingFile), os.O_RDWR, 0)
 	if err != nil {
 		return false
 	}
 	defer f.Close() // nothing was written; ends the lock
-	return lock(f) != nil
+	return errors.Is(lock(f), errBusy)
 }
 
 // HasSnapshot says that there is an answer to carry on from.

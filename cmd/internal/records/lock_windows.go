@@ -1,6 +1,7 @@
 package records
 
 import (
+	"errors"
 	"os"
 
 	"golang.org/x/sys/windows"
@@ -8,6 +9,10 @@ import (
 
 // lock takes the file for this process alone, or fails at once.
 func lock(f *os.File) error {
-	return windows.LockFileEx(windows.Handle(f.Fd()), windows.LOCKFILE_EXCLUSIVE_LOCK|windows.LOCKFILE_FAIL_IMMEDIATELY,
+	err := windows.LockFileEx(windows.Handle(f.Fd()), windows.LOCKFILE_EXCLUSIVE_LOCK|windows.LOCKFILE_FAIL_IMMEDIATELY,
 		0, 1, 0, new(windows.Overlapped))
+	if errors.Is(err, windows.ERROR_LOCK_VIOLATION) || errors.Is(err, windows.ERROR_IO_PENDING) {
+		return errBusy
+	}
+	return err
 }
