@@ -57,9 +57,13 @@ func (a *app) solve(s *session) error {
 // process grows beyond so many bytes; 0 leaves it alone.
 func keepWithin(bytes int64) {
 	if bytes > 0 {
-		debug.SetMemoryLimit(bytes)
+		debug.SetMemoryLimit(max(bytes-outsideHeap, bytes/2))
 	}
 }
+
+// outsideHeap is what the process holds that the run-time system does not count,
+// its own text above all; measured.
+const outsideHeap = 12_000_000
 
 // hold tells the interrupt handler what it may have to clean up and print.
 func (a *app) hold(task string, rec *report.Record, outputs ...string) {
