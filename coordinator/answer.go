@@ -113,8 +113,8 @@ func (r *runner) write() error {
 	for _, x := range r.x {
 		d.Values = append(d.Values, x...)
 	}
-	comment := []string{fmt.Sprintf("rowstead %s: residual %.2e, rows scaled %.2e, tolerance %.0e",
-		r.rec.Verdict, float64(r.rec.Residuals.True), float64(r.rec.Residuals.Scaled), r.job.Tolerance)}
+	comment := []string{fmt.Sprintf("rowstead %s: residual %s, rows scaled %s, tolerance %s",
+		r.rec.Verdict, r.rec.Residuals.True.Short(3), r.rec.Residuals.Scaled.Short(3), r.rec.Tolerance.Short(3))}
 	err := matfile.WriteDense(path, d, matfile.WriteOptions{Overwrite: overwrite, Comment: comment})
 	if err != nil {
 		r.rec.Verdict = report.None

@@ -45,6 +45,10 @@ func shortest(v float64) string {
 	return exponent(strconv.FormatFloat(v, 'e', -1, 64))
 }
 
+// Short writes n with the given number of significant digits for a person; "not
+// known" when it was not measured or is not finite.
+func (n Number) Short(digits int) string { return short(n, digits) }
+
 // short writes v with the given number of significant digits for a person;
 // "not known" when it was not measured or is not finite.
 func short(v Number, digits int) string {
