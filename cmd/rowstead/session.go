@@ -14,6 +14,7 @@ import (
 	"rowstead/cmd/internal/records"
 	"rowstead/cmd/internal/replace"
 	"rowstead/coordinator"
+	"rowstead/coordinator/fleet"
 	"rowstead/coordinator/report"
 )
 
@@ -46,11 +47,24 @@ func (a *app) solve(s *session) error {
 	a.interrupt.gentle.Store(true) // what follows is short and should be whole
 	a.screen.clear()
 	if err != nil {
+		err = s.next(err)
 		s.rec.State, s.rec.Error = report.BrokenOff, oneLine(err)
 		a.save(s)
 		return err
 	}
 	return a.conclude(s)
+}
+
+// next adds to the loss of a worker what can be done about it.
+func (s *session) next(err error) error {
+	var lost *fleet.MemberError
+	switch {
+	case !errors.As(err, &lost):
+		return err
+	case s.run.ID != "" && s.run.HasSnapshot():
+		return fmt.Errorf("%w; carry on from the last snapshot with rowstead resume %s", err, s.run.ID)
+	}
+	return fmt.Errorf("%w; nothing was kept yet, start the run again", err)
 }
 
 // keepWithin makes the run-time system collect what is left over before the

@@ -55,9 +55,9 @@ type MemberError struct {
 	Err    error
 }
 
-// Error names the member, the verb and the rows.
+// Error names the member, the verb and the rows, counted from 1.
 func (e *MemberError) Error() string {
-	return fmt.Sprintf("%s: %s, rows %d to %d: %v", e.Member, e.Op, e.Lo, e.Hi-1, e.Err)
+	return fmt.Sprintf("%s: %s, rows %d to %d: %v", e.Member, e.Op, e.Lo+1, e.Hi, e.Err)
 }
 
 // Unwrap returns the member's own error.

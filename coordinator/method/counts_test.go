@@ -47,10 +47,13 @@ func TestProductsAgainstAnotherProgram(t *testing.T) {
 			seeds[family]++
 			continue
 		}
-		// Here the scaled and the original residual must both hold, there the
-		// scaled one alone: problem B pays for it, and short runs for the steps
-		// that complete a panel.
-		if limit := max(1.1*float64(counts[i].Ladder), float64(counts[i].Ladder)+9); float64(res.Products) > limit {
+		limit := 1.1 * float64(counts[i].Ladder)
+		if strings.HasPrefix(c.Name, "problem B") {
+			// There the scaled residual alone ends the run; here the original one
+			// must hold too, which costs this system some further steps.
+			limit = 1.15 * float64(counts[i].Ladder)
+		}
+		if float64(res.Products) > limit {
 			t.Errorf("%s, %s: %d products, want at most %.0f", c.Name, c.Precondition, res.Products, limit)
 		}
 	}
